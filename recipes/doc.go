@@ -1,0 +1,2 @@
+// Package recipes reads the language in which an object is weighed.
+package recipes
