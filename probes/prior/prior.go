@@ -75,8 +75,12 @@ func LogUniform(lo, hi float64) (Prior, error) {
 }
 
 // TwoPiece returns the two-piece normal whose 16th, 50th and 84th percentiles
-// are x−minus, x and x+plus: in score s, x + plus·s above and x + minus·s below
-// the median.
+// are x−minus, x and x+plus. In score s it is x + plus·s/z above and
+// x + minus·s/z below the median, with z = Φ⁻¹(0.84) = 0.99446: the percentiles
+// are kept to the letter, so that the lo and hi a weighing prints, read back as
+// a reported mass, come out as the same lo and hi. An interval quoted at one
+// standard deviation (15.87 to 84.13 per cent) is taken as 0.6 per cent wider
+// than it was meant; a symmetric error belongs in Normal, where it is exact.
 func TwoPiece(x, minus, plus float64) (Prior, error) {
 	return checked(Prior{Kind: TwoPieceKind, A: x, B: minus, C: plus}, minus > 0 && plus > 0, "both errors must be positive")
 }
