@@ -30,6 +30,8 @@ const (
 	ProtonMassKilogram = 1.67262192369e-27
 	// KiloelectronvoltJoule is 1 keV in J, exact (SI definition of e).
 	KiloelectronvoltJoule = 1.602176634e-16
+	// StefanBoltzmannSI is σ_SB in W m⁻² K⁻⁴, exact (SI definitions), to ten digits.
+	StefanBoltzmannSI = 5.670374419e-8
 	// JulianYearSecond is the Julian year of 365.25 days in s, exact.
 	JulianYearSecond = 31557600.0
 
