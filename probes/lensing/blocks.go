@@ -1,0 +1,88 @@
+package lensing
+
+import "steelyard/probes/method"
+
+// sourcesBlock is a distribution of source redshifts.
+var sourcesBlock = method.Block{
+	Name: "sources",
+	Doc:  "The redshift distribution of the sources, foreground included: one row a redshift, with its weight.",
+	Columns: []method.Column{
+		{Name: "redshift", Required: true, Doc: "redshift of the sources of this row"},
+		{Name: "weight", Doc: "their weight; without it every row weighs the same"},
+	},
+}
+
+var sourceRedshift = method.Setting{
+	Name: "source_redshift", Kind: method.Exact, Low: 1e-6, High: 1100,
+	Doc: "one effective redshift for all sources",
+}
+
+var blocks = []method.Block{
+	{
+		Name: "galaxies",
+		Doc: "A catalogue of galaxy shapes, one row a galaxy: ε = (a−b)/(a+b) on the axes of right ascension and declination. " +
+			"Every galaxy needs a redshift, its own or an effective one; one that is not behind the lens counts with no shear.",
+		Select: true,
+		Columns: []method.Column{
+			{Name: "ra", Unit: "rad", Required: true, Doc: "right ascension, ICRS"},
+			{Name: "dec", Unit: "rad", Required: true, Doc: "declination, ICRS"},
+			{Name: "e1", Required: true, Doc: "ellipticity along the axes: positive for an image drawn out east–west"},
+			{Name: "e2", Required: true, Doc: "ellipticity along the diagonals: positive as `handedness` says"},
+			{Name: "weight", Doc: "weight of the shape; without it every galaxy weighs the same"},
+			{Name: "redshift", Doc: "redshift of the galaxy; without it `source_redshift` or `sources`"},
+		},
+		Settings: []method.Setting{
+			{
+				Name: "handedness", Kind: method.Choice, Choices: []string{"east", "west"}, Default: method.Word("east"),
+				Doc: "which way the x axis of the shapes points, the y axis pointing north. `east`: towards rising right ascension, so that e2 > 0 is an image " +
+					"drawn out from south-west to north-east. `west`: towards falling right ascension, as x runs in an image with north up and east left, so that e2 > 0 " +
+					"is drawn out from south-east to north-west",
+			},
+			sourceRedshift,
+		},
+		Blocks: []method.Block{sourcesBlock},
+	},
+	{
+		Name: "bins",
+		Doc:  "The radial bins into which the galaxies are gathered: `count` bins of equal width in the logarithm, or their `edges`.",
+		Settings: []method.Setting{
+			{Name: "from", Kind: method.Exact, Unit: "kpc", Length: true, Doc: "inner edge of the first bin"},
+			{Name: "to", Kind: method.Exact, Unit: "kpc", Length: true, Doc: "outer edge of the last bin"},
+			{Name: "count", Kind: method.Integer, Low: 3, High: 1000, Doc: "number of bins"},
+			{Name: "edges", Kind: method.List, Unit: "kpc", Length: true, Doc: "all edges in rising order, instead of `from`, `to` and `count`"},
+		},
+	},
+	{
+		Name: "profile",
+		Doc:  "A binned profile of the tangential reduced shear. With `inner` and `outer` the model is averaged over the area of each bin, with `radius` it is taken there.",
+		Columns: []method.Column{
+			{Name: "radius", Unit: "kpc", Length: true, Doc: "radius at which the shear is quoted"},
+			{Name: "inner", Unit: "kpc", Length: true, Doc: "inner edge of the bin"},
+			{Name: "outer", Unit: "kpc", Length: true, Doc: "outer edge of the bin"},
+			{Name: "value", Required: true, Doc: "tangential reduced shear"},
+			{Name: "error", Doc: "its error"},
+			{Name: "minus", Doc: "size of the error below"},
+			{Name: "plus", Doc: "size of the error above"},
+			{Name: "low", Doc: "lower bound of the interval"},
+			{Name: "high", Doc: "upper bound of the interval"},
+			{Name: "cross", Doc: "cross component, which gravity leaves at zero"},
+		},
+		Alternatives: [][][]string{
+			{{"radius"}, {"inner", "outer"}},
+			{{"error"}, {"minus", "plus"}, {"low", "high"}},
+		},
+		Settings: []method.Setting{sourceRedshift},
+		Blocks: []method.Block{
+			sourcesBlock,
+			{
+				Name: "covariance",
+				Doc:  "The covariance of the tangential shears, one row a pair of bins; it takes the place of their errors. A pair may be given once or both ways, and is zero when left out.",
+				Columns: []method.Column{
+					{Name: "first", Required: true, Doc: "number of one bin, counted from 1 in the order of the profile"},
+					{Name: "second", Required: true, Doc: "number of the other"},
+					{Name: "value", Required: true, Doc: "their covariance"},
+				},
+			},
+		},
+	},
+}

@@ -1,0 +1,148 @@
+package lensing
+
+import (
+	"fmt"
+	"math"
+
+	"steelyard/probes/infer"
+)
+
+// strong is the reduced shear above which the mean over sources to second order
+// is no longer good to a per cent or two (common practice, no source).
+const strong = 0.3
+
+// sparse is the number of sources below which the mean of a bin is not yet
+// normally distributed (common practice, no source).
+const sparse = 10
+
+// template is the mean of 1/R over the bin: the shear of an isothermal sphere
+// but for a factor.
+func (b Bin) template() float64 {
+	sum := 0.0
+	for _, n := range b.Nodes {
+		sum += n.Share / n.Radius
+	}
+	return sum
+}
+
+// slice returns the bins first ≤ i < end with their covariance.
+func (p *Profile) slice(first, end int) *Profile {
+	part := *p
+	part.Bins = p.Bins[first:end]
+	if p.Covariance != nil {
+		n := len(p.Bins)
+		part.Covariance = nil
+		for i := first; i < end; i++ {
+			part.Covariance = append(part.Covariance, p.Covariance[i*n+first:i*n+end]...)
+		}
+	}
+	return &part
+}
+
+// signalToNoise is that of the amplitude of a 1/R profile fitted to the shear,
+//
+//	S = Σ t g/σ² / (Σ t²/σ²)^½,   t = ⟨1/R⟩,
+//
+// signed: about 0 ± 1 without a signal. first is the share of the first bin in
+// Σ t²/σ², the weight with which it enters.
+//
+// flipped is S with the sign of e2 reversed.
+func (p *Profile) signalToNoise() (s, flipped, first float64) {
+	sum, other, norm := 0.0, 0.0, 0.0
+	for i, b := range p.Bins {
+		t, sigma := b.template(), b.Error()
+		sum += t * b.Shear / (sigma * sigma)
+		other += t * b.Flipped / (sigma * sigma)
+		norm += t * t / (sigma * sigma)
+		if i == 0 {
+			first = norm
+		}
+	}
+	return sum / math.Sqrt(norm), other / math.Sqrt(norm), first / norm
+}
+
+// checks states what the profile and the best fit say of themselves; expected
+// is the shear of the best fit in each bin.
+func (p *Profile) checks(expected []float64) (checks []infer.Check, warnings []string) {
+	warnings = append(warnings, p.Warnings...)
+	add := func(c infer.Check, warning string) {
+		checks = append(checks, c)
+		if !c.Passed && warning != "" {
+			warnings = append(warnings, warning)
+		}
+	}
+	if p.HasCross {
+		add(p.crossCheck(), "the cross shear is not zero: gravity makes none, so the shapes or the centre are at fault")
+	}
+	s, flipped, first := p.signalToNoise()
+	add(infer.Check{
+		Name: "tangential signal", Statistic: s, PValue: -1, Passed: s > 2,
+		Note: "signal-to-noise of a 1/R profile",
+	}, fmt.Sprintf("no tangential shear to speak of: signal-to-noise %.1f", s))
+	if p.Counted {
+		c, warning := handedness(s, flipped)
+		add(c, warning)
+	}
+	add(infer.Check{
+		Name: "weight in the first bin", Statistic: first, PValue: -1, Passed: first < 0.5,
+		Note: "its share in that signal-to-noise squared",
+	}, fmt.Sprintf("the first bin alone carries %.0f%% of the weight", 100*first))
+	if p.Counted {
+		fewest := p.Bins[0]
+		for _, b := range p.Bins {
+			if b.Sources < fewest.Sources {
+				fewest = b
+			}
+		}
+		add(infer.Check{
+			Name: "sources per bin", Statistic: float64(fewest.Sources), PValue: -1, Passed: fewest.Sources >= sparse,
+			Note: "in the emptiest bin",
+		}, fmt.Sprintf("only %d sources between %.4g and %.4g kpc: their mean is hardly normal", fewest.Sources, fewest.Inner, fewest.Outer))
+	}
+	beyond := 0
+	for _, g := range expected {
+		if math.Abs(g) > strong {
+			beyond++
+		}
+	}
+	add(infer.Check{
+		Name: "strong shear", Statistic: float64(beyond), PValue: -1, Passed: beyond == 0,
+		Note: fmt.Sprintf("bins where the best fit has g above %g", strong),
+	}, fmt.Sprintf("the best fit has a reduced shear above %g in %d of %d bins, where the mean over sources is too low by several per cent; the bins were kept, fit_within leaves them out", strong, beyond, len(expected)))
+	return checks, warnings
+}
+
+// crossCheck is χ² of the cross shear against zero. Its errors are those of the
+// tangential shear.
+func (p *Profile) crossCheck() infer.Check {
+	n := len(p.Bins)
+	chi2 := 0.0
+	for _, b := range p.Bins {
+		d := b.Cross / b.Error()
+		chi2 += d * d
+	}
+	pv := infer.ChiSquareSurvival(chi2, n)
+	return infer.Check{
+		Name: "cross shear", Statistic: chi2, PValue: pv, Passed: pv >= 0.01,
+		Note: fmt.Sprintf("χ² against zero, %d bins", n),
+	}
+}
+
+// handedness asks whether another sign of e1 or e2 would give a far better
+// signal than s: a mirrored catalogue passes the cross-shear check, since its
+// tangential and cross shear both average to zero.
+func handedness(s, flipped float64) (infer.Check, string) {
+	// Reversing both reverses the signal; reversing e1 reverses that of e2 reversed.
+	best, what := flipped, "the sign of e2 reversed; set `handedness`"
+	if -flipped > best {
+		best, what = -flipped, "the sign of e1 reversed; the angle of the shapes is perhaps counted from north"
+	}
+	if -s > best {
+		best, what = -s, "the signs of e1 and e2 reversed; the shapes are perhaps drawn out towards the centre"
+	}
+	c := infer.Check{
+		Name: "handedness", Statistic: best, PValue: -1, Passed: !(best > 3 && best-s > 3),
+		Note: "best tangential signal-to-noise with a sign of e1 or e2 reversed",
+	}
+	return c, fmt.Sprintf("the tangential signal-to-noise is %.1f, but %.1f with %s", s, best, what)
+}

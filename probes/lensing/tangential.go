@@ -1,0 +1,60 @@
+package lensing
+
+import (
+	"context"
+
+	"steelyard/probes/estimate"
+	"steelyard/probes/infer"
+	"steelyard/probes/method"
+)
+
+// tangentialShear fits a halo to the tangential shear in bins.
+var tangentialShear = estimate.Method{
+	Declaration: method.Declaration{
+		Name:    "tangential-shear",
+		Version: 1,
+		Summary: "Fits a spherical halo to the tangential reduced shear in radial bins.",
+		Equation: "⟨g⟩ = (1+m)(1−f) ⟨β⟩γ / (1 − (⟨β²⟩/⟨β⟩) κ), averaged over each bin\n" +
+			"γ = ΔΣ/Σ_cr, κ = Σ/Σ_cr for a source at infinity; β = (D_ls/D_s)/(D_ls/D_s)_∞, 0 in the foreground",
+		Sources: []string{
+			"Seitz & Schneider 1997, A&A 318, 687 (mean over sources)",
+			"Bartelmann 1996, A&A 313, 697; Wright & Brainerd 2000, ApJ 534, 34 (NFW shear)",
+			"Navarro, Frenk & White 1997, ApJ 490, 493 (halo)",
+		},
+		Data: [][]string{{"galaxies", "bins"}, {"profile"}},
+		Settings: []method.Setting{
+			{
+				Name: "halo", Kind: method.Choice, Choices: []string{"nfw", "isothermal"},
+				Planned: []string{"einasto", "hernquist", "cored-isothermal"}, Default: method.Word("nfw"),
+				Doc: "the mass model",
+			},
+			massSetting, concentrationSetting,
+			{
+				Name: "covariance", Kind: method.Choices, Choices: []string{"shape"}, Planned: []string{"structure", "halo"}, Required: true,
+				Doc: "which sources of error the fit counts. Only `shape`, the noise of the galaxies' own shapes, is built yet, and it must be named: " +
+					"the errors are too small by what structure along the line of sight and the variety of haloes add",
+			},
+			{
+				Name: "fit_within", Kind: method.Span, Unit: "kpc", Length: true,
+				Doc: "use only the bins that lie wholly between these radii",
+			},
+			shearBiasSetting, dilutionSetting, distanceScaleSetting, elongationSetting,
+		},
+		Cautions: []string{
+			"The mean over sources is of second order in κ: where g exceeds 0.3 it is low by several per cent; leave such bins out with fit_within.",
+			"With shape noise alone the error does not hold structure along the line of sight, which adds about as much for a massive cluster at large radii (Hoekstra 2003, MNRAS 339, 1155).",
+		},
+	},
+	Uses: []string{"profile"},
+	Run: func(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
+		p := new(Profile)
+		if err := p.UnmarshalBinary(t.Reduced["profile"]); err != nil {
+			return nil, t.Errorf("%w", err)
+		}
+		f, err := newShearFit(t, p)
+		if err != nil {
+			return nil, err
+		}
+		return f.run(ctx)
+	},
+}
