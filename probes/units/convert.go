@@ -6,6 +6,17 @@ import (
 	"math/big"
 )
 
+// Reasons why a number cannot be converted.
+var (
+	// ErrNotNumber is returned when a text is not a decimal number.
+	ErrNotNumber = errors.New("not a number")
+	// ErrNotFinite is returned for NaN and the infinities.
+	ErrNotFinite = errors.New("not a finite number")
+	// ErrRange is returned when the result overflows double precision, or is
+	// not zero and would become zero.
+	ErrRange = errors.New("a number that double precision cannot hold")
+)
+
 // Convert multiplies a float64 exactly by the factor from one unit to another
 // and rounds once.
 func Convert(x float64, from, to Unit) (float64, error) {
@@ -14,7 +25,7 @@ func Convert(x float64, from, to Unit) (float64, error) {
 		return 0, err
 	}
 	if math.IsNaN(x) || math.IsInf(x, 0) {
-		return 0, errNotFinite
+		return 0, ErrNotFinite
 	}
 	return rounded(times(new(big.Rat).SetFloat64(x), factor))
 }
@@ -26,37 +37,31 @@ func Decimal(text string, from, to Unit) (float64, error) {
 	if err != nil {
 		return 0, err
 	}
-	x, err := signed(text)
-	if err != nil {
-		return 0, err
-	}
-	return rounded(times(x, factor))
+	return decimalTimes(text, factor)
 }
 
-var (
-	errNotFinite = errors.New("not a finite number")
-	errNotNumber = errors.New("not a number")
-	errRange     = errors.New("a number that double precision cannot hold")
-)
-
-// signed reads a decimal with an optional sign and nothing else.
-func signed(text string) (*big.Rat, error) {
+// decimalTimes reads a decimal, with a sign or not and nothing else beside it,
+// and returns its product with the factor.
+func decimalTimes(text string, factor *big.Rat) (float64, error) {
 	start := 0
 	if text != "" && (text[0] == '+' || text[0] == '-') {
 		start = 1
 	}
 	if end := scanNumber(text, start); end == start || end != len(text) {
-		return nil, errNotNumber
+		return 0, ErrNotNumber
 	}
-	return exact(text)
+	x, err := exact(text)
+	if err != nil {
+		return 0, err
+	}
+	return rounded(x.Mul(x, factor))
 }
 
-// rounded returns the nearest float64. It refuses numbers that overflow, or
-// that are not zero and would become zero.
+// rounded returns the nearest float64.
 func rounded(x *big.Rat) (float64, error) {
 	f, _ := x.Float64()
 	if math.IsInf(f, 0) || f == 0 && x.Sign() != 0 {
-		return 0, errRange
+		return 0, ErrRange
 	}
 	return f, nil
 }
