@@ -162,28 +162,47 @@ func (s Settings) Transcript() []string {
 	sort.Strings(names)
 	lines := make([]string, len(names))
 	for i, name := range names {
-		lines[i] = strconv.Quote(name) + " = " + s[name].transcript()
+		lines[i] = name + " = " + s[name].transcript()
 	}
 	return lines
 }
 
+var kinds = map[prior.Kind]string{
+	prior.ExactKind: "exact", prior.NormalKind: "normal", prior.HalfNormalKind: "half_normal", prior.LogNormalKind: "lognormal",
+	prior.UniformKind: "uniform", prior.LogUniformKind: "loguniform", prior.TwoPieceKind: "two_piece",
+}
+
+// transcript writes the prior and, each behind its name, whatever else is set.
 func (v Value) transcript() string {
 	var b strings.Builder
-	fmt.Fprintf(&b, "prior %d %s %s %s", v.Prior.Kind, Exactly64(v.Prior.A), Exactly64(v.Prior.B), Exactly64(v.Prior.C))
-	fmt.Fprintf(&b, " nuisance %q relation %q text %q flag %t unit %q", v.Nuisance, v.Relation, v.Text, v.Flag, v.Unit)
-	fmt.Fprintf(&b, " list %q numbers", v.List)
-	for _, x := range v.Numbers {
-		b.WriteByte(' ')
-		b.WriteString(Exactly64(x))
+	fmt.Fprintf(&b, "%s(%s, %s, %s)", kinds[v.Prior.Kind], Digits(v.Prior.A), Digits(v.Prior.B), Digits(v.Prior.C))
+	for _, word := range []struct{ name, text string }{
+		{"nuisance", v.Nuisance}, {"relation", v.Relation}, {"text", v.Text}, {"unit", v.Unit},
+	} {
+		if word.text != "" {
+			fmt.Fprintf(&b, " %s %q", word.name, word.text)
+		}
+	}
+	if v.Flag {
+		b.WriteString(" flag")
+	}
+	if v.List != nil {
+		fmt.Fprintf(&b, " list %q", v.List)
+	}
+	for i, x := range v.Numbers {
+		if i == 0 {
+			b.WriteString(" numbers")
+		}
+		b.WriteString(" " + Digits(x))
 	}
 	return b.String()
 }
 
-// Exactly64 renders a float64 so that equal text means equal bits, with
-// negative zero taken as zero.
-func Exactly64(x float64) string {
+// Digits renders a float64 in the fewest decimal digits that give the same bits
+// back, with negative zero taken as zero.
+func Digits(x float64) string {
 	if x == 0 {
 		x = 0
 	}
-	return strconv.FormatFloat(x, 'x', -1, 64)
+	return strconv.FormatFloat(x, 'g', -1, 64)
 }

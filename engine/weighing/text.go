@@ -1,0 +1,301 @@
+package weighing
+
+import (
+	"fmt"
+	"io"
+	"math"
+	"strings"
+	"unicode/utf8"
+)
+
+const width = 100 // columns of the terminal the text is laid out for
+
+// WriteText writes the weighing for reading in a terminal.
+func (w *Weighing) WriteText(out io.Writer) error {
+	t := &text{w: w, unit: w.massUnit()}
+	t.title()
+	t.masses()
+	for _, c := range w.places() {
+		t.place(c)
+	}
+	t.checks()
+	t.section("Rests on", func(e Estimate) []string { return e.Assumes })
+	t.cautions()
+	_, err := io.WriteString(out, t.b.String())
+	return err
+}
+
+type text struct {
+	w    *Weighing
+	b    strings.Builder
+	unit float64 // power of ten in which masses are written
+}
+
+// massUnit is the power of ten of a typical mass of the object.
+func (w *Weighing) massUnit() float64 {
+	sum, n := 0.0, 0
+	for _, e := range w.Estimates {
+		for _, own := range e.Own {
+			if own.Of == "critical" && own.Overdensity == 500 {
+				sum, n = sum+math.Log10(own.Mass.Median), n+1
+			}
+		}
+	}
+	if n == 0 {
+		return 1e14
+	}
+	return math.Pow(10, math.Floor(sum/float64(n)))
+}
+
+func (t *text) printf(format string, args ...any) { fmt.Fprintf(&t.b, format, args...) }
+
+func (t *text) title() {
+	c := t.w.Cosmology
+	t.printf("%s at z = %g in a universe of H0 = %g km/s/Mpc, Ωm = %g, ΩΛ = %.6g", t.w.Object.Name, t.w.Object.Redshift, c.HubbleConstant, c.OmegaMatter, c.OmegaLambda)
+	if c.W0 != nil {
+		t.printf(", w0 = %g", *c.W0)
+	}
+	if c.Wa != nil {
+		t.printf(", wa = %g", *c.Wa)
+	}
+	t.printf("\n")
+}
+
+// masses lists every estimate inside its own radii.
+func (t *text) masses() {
+	if len(t.w.Estimates) == 0 {
+		return
+	}
+	t.printf("\nMasses in %s Msun, each inside its own radius (median, 84th and 16th percentile)\n", power(t.unit))
+	head := []string{""}
+	for _, own := range t.w.Estimates[0].Own {
+		head = append(head, "M_"+definition(own))
+	}
+	head = append(head, "R_500c, kpc")
+	rows := [][]string{head}
+	beyond := false
+	for _, e := range t.w.Estimates {
+		row, radius := []string{e.Name}, ""
+		for _, own := range e.Own {
+			row = append(row, own.Mass.scaled(t.unit).String()+star(own.Extrapolated))
+			beyond = beyond || own.Extrapolated
+			if own.Of == "critical" && own.Overdensity == 500 {
+				radius = own.Radius.String()
+			}
+		}
+		rows = append(rows, append(row, radius))
+	}
+	t.table(rows)
+	if beyond {
+		t.printf("  * extrapolated: beyond the data of that estimate\n")
+	}
+}
+
+// places lists the labels of the places compared, in order.
+func (w *Weighing) places() []string {
+	var labels []string
+	seen := map[string]bool{}
+	for _, e := range w.Estimates {
+		for _, at := range e.At {
+			if !seen[at.At] {
+				labels = append(labels, at.At)
+			}
+			seen[at.At] = true
+		}
+	}
+	return labels
+}
+
+// place compares the estimates at one place.
+func (t *text) place(label string) {
+	own := false
+	var tensions []Tension
+	for _, x := range t.w.Tensions {
+		if x.At == label {
+			tensions, own = append(tensions, x), own || x.Radii == "own"
+		}
+	}
+	radius, rows := 0.0, [][]string{}
+	for _, e := range t.w.Estimates {
+		for _, at := range e.At {
+			if at.At == label {
+				radius = at.Radius
+				rows = append(rows, []string{e.Name, at.Mass.scaled(t.unit).String() + star(at.Extrapolated)})
+			}
+		}
+	}
+	symbol := strings.TrimPrefix(label, "overdensity ")
+	switch {
+	case own:
+		t.printf("\nOverdensity %s, each estimate at its own radius (own radii, not matched): the masses above\n", symbol)
+	case symbol != label:
+		t.printf("\nM(<R = %.0f kpc), the R of overdensity %s of %s, matched for all; %s Msun\n", radius, symbol, t.w.RadiiFrom, power(t.unit))
+	default:
+		t.printf("\nM(<R = %.0f kpc), matched for all; %s Msun\n", radius, power(t.unit))
+	}
+	if !own {
+		t.table(rows)
+	}
+	rows = [][]string{{"  ratio", "", "σ", "p", "p of any"}}
+	for _, x := range tensions {
+		sigma, family := fmt.Sprintf("%+.1f", x.Sigma), probability(x.PFamily)
+		if x.Tail {
+			sigma = "≈" + sigma
+		}
+		if x.SameData {
+			family = "same data"
+		}
+		rows = append(rows, []string{x.A + " / " + x.B, x.Ratio.String(), sigma, probability(x.PValue), family})
+	}
+	t.table(rows)
+	for _, c := range t.w.Consistency {
+		if c.At == label {
+			about := ""
+			if c.Tail {
+				about = "≈"
+			}
+			t.printf("  All %d together: %s, %s%.1fσ (p = %s; χ² = %.1f for %d)\n", len(c.Of), strings.ToUpper(c.Verdict), about, c.Sigma, probability(c.PValue), c.Chi2, c.Dof)
+		}
+	}
+}
+
+// checks lists the tests of data and fits, one line an estimate.
+func (t *text) checks() {
+	t.section("Checks", func(e Estimate) []string {
+		var items []string
+		if e.Quality.Dof > 0 {
+			items = append(items, fmt.Sprintf("fit χ² = %.1f for %d", e.Quality.Chi2, e.Quality.Dof))
+		}
+		for _, c := range e.Checks {
+			item := fmt.Sprintf("%s %.3g", c.Name, c.Statistic)
+			if c.PValue != nil {
+				item += fmt.Sprintf(" (p = %s)", probability(*c.PValue))
+			}
+			if !c.Passed {
+				item += " FAILED"
+			}
+			items = append(items, item)
+		}
+		return items
+	})
+}
+
+func (t *text) section(title string, items func(Estimate) []string) {
+	wrote := false
+	for _, e := range t.w.Estimates {
+		list := items(e)
+		if len(list) == 0 {
+			continue
+		}
+		if !wrote {
+			t.printf("\n%s\n", title)
+			wrote = true
+		}
+		t.wrap("  ", e.Name+": "+strings.Join(list, "; "))
+	}
+}
+
+// cautions gathers what a reader must know before believing a number.
+func (t *text) cautions() {
+	var lines []string
+	for _, e := range t.w.Estimates {
+		for _, c := range e.Checks {
+			if !c.Passed && c.Note != "" {
+				lines = append(lines, e.Name+": "+c.Note)
+			}
+		}
+		for _, warning := range e.Warnings {
+			lines = append(lines, e.Name+": "+warning)
+		}
+	}
+	lines = append(lines, t.w.Warnings...)
+	for _, f := range t.w.Failures {
+		lines = append(lines, fmt.Sprintf("%s (%s) failed: %s", f.Node, f.Where, f.Reason))
+	}
+	if len(lines) == 0 {
+		return
+	}
+	t.printf("\nCautions\n")
+	for _, line := range lines {
+		t.wrap("  ", line)
+	}
+}
+
+// table writes rows with the first column left and the others right aligned;
+// rows too long for the terminal put their first column on a line of its own.
+func (t *text) table(rows [][]string) {
+	widths := make([]int, len(rows[0]))
+	for _, row := range rows {
+		for c, cell := range row {
+			widths[c] = max(widths[c], utf8.RuneCountInString(cell))
+		}
+	}
+	total := 2
+	for _, w := range widths {
+		total += w + 2
+	}
+	for _, row := range rows {
+		line := "  " + row[0]
+		if total > width && len(row) > 1 {
+			if row[0] != "" {
+				t.printf("%s\n", line)
+			}
+			line = "     "
+		} else {
+			line += pad(row[0], widths[0])
+		}
+		for c, cell := range row[1:] {
+			line += "  " + pad(cell, widths[c+1]) + cell
+		}
+		t.printf("%s\n", strings.TrimRight(line, " "))
+	}
+}
+
+func pad(cell string, w int) string { return strings.Repeat(" ", w-utf8.RuneCountInString(cell)) }
+
+// wrap breaks a text at spaces, later lines indented two more.
+func (t *text) wrap(indent, s string) {
+	line := indent
+	for i, word := range strings.Fields(s) {
+		if i > 0 && utf8.RuneCountInString(line)+1+utf8.RuneCountInString(word) > width {
+			t.printf("%s\n", line)
+			line = indent + "  " + word
+			continue
+		}
+		if i > 0 {
+			line += " "
+		}
+		line += word
+	}
+	t.printf("%s\n", line)
+}
+
+func star(extrapolated bool) string {
+	if extrapolated {
+		return "*"
+	}
+	return " "
+}
+
+func definition(own Own) string {
+	switch own.Of {
+	case "virial":
+		return "virial"
+	case "mean":
+		return fmt.Sprintf("%gm", own.Overdensity)
+	}
+	return fmt.Sprintf("%gc", own.Overdensity)
+}
+
+func power(unit float64) string { return fmt.Sprintf("1e%.0f", math.Log10(unit)) }
+
+// probability writes a p-value to two digits.
+func probability(p float64) string {
+	switch {
+	case p >= 0.0995:
+		return fmt.Sprintf("%.2f", p)
+	case p >= 0.000995:
+		return fmt.Sprintf("%.*f", 1-int(math.Floor(math.Log10(p))), p)
+	}
+	return fmt.Sprintf("%.0e", p)
+}
