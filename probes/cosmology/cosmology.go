@@ -113,8 +113,8 @@ func (p Params) check() error {
 		return fmt.Errorf("cosmology: hubble_constant = %g km/s/Mpc lies outside 1 to 1000; 70 km/s/Mpc is common", p.HubbleConstant)
 	case p.OmegaMatter <= 0:
 		return fmt.Errorf("cosmology: omega_matter = %g must be above zero", p.OmegaMatter)
-	case p.CMBTemperature < 0:
-		return fmt.Errorf("cosmology: cmb_temperature = %g K must not be negative; 0 leaves radiation out", p.CMBTemperature)
+	case p.CMBTemperature < 0 || p.CMBTemperature > 10:
+		return fmt.Errorf("cosmology: cmb_temperature = %g K lies outside 0 to 10; 2.7255 K is measured, 0 leaves radiation out", p.CMBTemperature)
 	case p.OmegaLambda != 0 && p.W0+p.Wa >= 0:
 		return fmt.Errorf("cosmology: w0 + wa = %g: dark energy would never have been thinner than matter; w0 = -1 and wa = 0 are a cosmological constant", p.W0+p.Wa)
 	}

@@ -1,7 +1,7 @@
 package cosmology
 
 import (
-	"errors"
+	"fmt"
 	"math"
 
 	"steelyard/probes/constants"
@@ -84,7 +84,7 @@ func (c *Cosmology) OmegaMatter(z float64) float64 {
 // outside flat ΛCDM, for which alone the formula holds.
 func (c *Cosmology) VirialOverdensity(z float64) (float64, error) {
 	if c.curvature != 0 || (c.p.OmegaLambda != 0 && !c.constant) {
-		return 0, errors.New("cosmology: the virial overdensity of Bryan & Norman 1998 holds in a flat background with a cosmological constant only; state the overdensity as a number")
+		return 0, fmt.Errorf("cosmology: the virial overdensity of Bryan & Norman 1998 holds in a flat background with a cosmological constant only, and here omega_curvature = %.3g, w0 = %g, wa = %g; state the overdensity as a number", c.curvature, c.p.W0, c.p.Wa)
 	}
 	x := c.OmegaMatter(z) - 1
 	return 18*math.Pi*math.Pi + x*(82-39*x), nil

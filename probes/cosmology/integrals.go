@@ -108,13 +108,13 @@ func (c *Cosmology) tabulate() error {
 		if !(x > 0) || math.IsInf(x, 0) {
 			y -= p.step / 2
 			a := y * (y + 2*p.rootQ)
-			return fmt.Errorf("cosmology: there was no big bang: with omega_matter = %g and omega_lambda = %g the expansion stands still near z = %.2g; lower omega_lambda", c.p.OmegaMatter, c.p.OmegaLambda, 1/a-1)
+			return fmt.Errorf("cosmology: with omega_matter = %g and omega_lambda = %g the expansion stands still near z = %.2g, so there was no big bang; bring omega_lambda nearer to 1 - omega_matter", c.p.OmegaMatter, c.p.OmegaLambda, 1/a-1)
 		}
 		p.comoving[i+1] = p.comoving[i] + x
 		p.lookback[i+1] = p.lookback[i] + t
 	}
 	if doubt > tolerance*p.comoving[panels] {
-		return fmt.Errorf("cosmology: with omega_matter = %g and omega_lambda = %g the expansion came so close to a halt that distances cannot be computed; lower omega_lambda", c.p.OmegaMatter, c.p.OmegaLambda)
+		return fmt.Errorf("cosmology: with omega_matter = %g and omega_lambda = %g the expansion came so close to a halt that distances cannot be computed; bring omega_lambda nearer to 1 - omega_matter", c.p.OmegaMatter, c.p.OmegaLambda)
 	}
 	return nil
 }
