@@ -238,9 +238,6 @@ func (p *parser) scale() (*big.Rat, error) {
 		if !given {
 			n = 1
 		}
-		if n > maxExponent || n < -maxExponent {
-			return nil, p.fail(start, "the scale 10**%d is beyond what a number can hold", n)
-		}
 		value = times(value, powerOfTen(n))
 	}
 	if value.Sign() <= 0 {
@@ -351,7 +348,7 @@ func (p *parser) power() (n int, given bool, err error) {
 	}
 	p.i = end
 	n, err = strconv.Atoi(p.text[at:end])
-	if err != nil {
+	if err != nil || n > maxExponent || n < -maxExponent {
 		return 0, false, p.fail(at, "the power %s is too large", p.text[at:end])
 	}
 	if closing && !p.has(")") || strings.HasPrefix(p.rest(), "/") && closing {
