@@ -1,12 +1,52 @@
 package recipes
 
-import "errors"
+import (
+	"fmt"
+	"math"
+	"slices"
+
+	"steelyard/probes/units"
+)
 
 // Predicate is a compiled `select`: a condition on the columns of a data file.
+// It is safe for concurrent use.
 type Predicate struct {
-	text  string
-	names []string
+	text       string
+	names      []string
+	quantities []quantity
+	bound      []float64 // the quantities in the units of their columns
+	test       condition
 }
+
+// quantity is a quantity that some column is compared with.
+type quantity struct {
+	column int // index into names
+	text   string
+	value  units.Quantity
+	unit   string // of the column, as far as it is known
+}
+
+// row is what a condition is evaluated on: the values of the columns and the
+// bound quantities.
+type row struct {
+	values     []any
+	quantities []float64
+}
+
+// truth is a condition's outcome. It is unknown where it depends on a missing
+// value.
+type truth uint8
+
+const (
+	no truth = iota
+	yes
+	unknown
+)
+
+type (
+	condition func(row) (truth, error)
+	number    func(row) (float64, error)
+)
 
 // Text returns the condition as written.
 func (p *Predicate) Text() string { return p.text }
@@ -15,20 +55,191 @@ func (p *Predicate) Text() string { return p.text }
 // each once and in the order Keep takes their values.
 func (p *Predicate) Names() []string { return p.names }
 
-// Quantities returns those of Names that are compared with a quantity and so
-// must be given a unit by Bind.
-func (p *Predicate) Quantities() []string { return nil }
+// Quantities returns those of Names that are compared with a quantity and whose
+// unit the recipe does not state: they need Bind.
+func (p *Predicate) Quantities() []string {
+	var names []string
+	for _, q := range p.quantities {
+		if name := p.names[q.column]; q.unit == "" && !slices.Contains(names, name) {
+			names = append(names, name)
+		}
+	}
+	return names
+}
 
 // Bind returns the predicate with its quantities converted to the units that
-// unit gives for a column ("" where a column has none). Columns whose unit the
-// recipe states are bound already and stay so where unit returns "".
+// unit gives for a column ("" where a column has none). A unit that the recipe
+// states goes before.
 func (p *Predicate) Bind(unit func(column string) string) (*Predicate, error) {
-	return nil, errors.New("recipes: being written")
+	b := *p
+	b.bound = make([]float64, len(p.quantities))
+	for i, q := range p.quantities {
+		name := p.names[q.column]
+		text := q.unit
+		if text == "" {
+			text = unit(name)
+		}
+		if text == "" {
+			return nil, fmt.Errorf("select: the column %s is compared with %q and has no unit: state it in the file or in the recipe, or compare with a plain number", name, q.text)
+		}
+		u, err := units.Parse(text)
+		if err != nil {
+			return nil, fmt.Errorf("select: the unit of the column %s: %w", name, err)
+		}
+		x, _, _, err := q.value.In(u)
+		if err != nil {
+			return nil, fmt.Errorf("select: the column %s is compared with %q: %w", name, q.text, err)
+		}
+		b.bound[i] = x
+	}
+	return &b, nil
 }
 
 // Keep reports whether a row passes. The values stand in the order of Names and
-// are float64 or string; NaN is a missing value, and a condition that depends
-// on one is not fulfilled.
+// are float64 or string. NaN is a missing value: a condition whose outcome
+// depends on one is not fulfilled, and neither is its negation. So is a
+// division by zero.
 func (p *Predicate) Keep(values []any) (bool, error) {
-	return false, errors.New("recipes: being written")
+	if len(values) != len(p.names) {
+		return false, fmt.Errorf("select: %d values for %d columns", len(values), len(p.names))
+	}
+	if len(p.bound) != len(p.quantities) {
+		return false, fmt.Errorf("select: the columns %q are compared with quantities and their units were not given", p.Quantities())
+	}
+	t, err := p.test(row{values, p.bound})
+	return t == yes, err
+}
+
+// columnNumber reads a column that must hold numbers.
+func columnNumber(i int, name string) number {
+	return func(r row) (float64, error) {
+		if x, ok := r.values[i].(float64); ok {
+			return x, nil
+		}
+		return 0, fmt.Errorf("select: the column %s holds text (%q here), which is no number", name, fmt.Sprint(r.values[i]))
+	}
+}
+
+// columnText compares a column that must hold texts.
+func columnText(i int, name, text string, equal bool) condition {
+	return func(r row) (truth, error) {
+		s, ok := r.values[i].(string)
+		if !ok {
+			return no, fmt.Errorf("select: the column %s holds numbers; compare it with a number instead of the text %q", name, text)
+		}
+		return truthOf((s == text) == equal), nil
+	}
+}
+
+// columnsEqual compares two columns, both of numbers or both of texts.
+func columnsEqual(i, j int, iName, jName string, equal bool) condition {
+	return func(r row) (truth, error) {
+		a, aText := r.values[i].(string)
+		b, bText := r.values[j].(string)
+		if aText && bText {
+			return truthOf((a == b) == equal), nil
+		}
+		x, xNumber := r.values[i].(float64)
+		y, yNumber := r.values[j].(float64)
+		if !xNumber || !yNumber {
+			return no, fmt.Errorf("select: one of the columns %s and %s holds texts and the other numbers", iName, jName)
+		}
+		if math.IsNaN(x) || math.IsNaN(y) {
+			return unknown, nil
+		}
+		return truthOf((x == y) == equal), nil
+	}
+}
+
+// compare compares two numbers.
+func compare(a, b number, holds func(x, y float64) bool) condition {
+	return func(r row) (truth, error) {
+		x, err := a(r)
+		if err != nil {
+			return no, err
+		}
+		y, err := b(r)
+		if err != nil {
+			return no, err
+		}
+		if math.IsNaN(x) || math.IsNaN(y) {
+			return unknown, nil
+		}
+		return truthOf(holds(x, y)), nil
+	}
+}
+
+// calculate joins two numbers. A result that is not finite is a missing value.
+func calculate(a, b number, f func(x, y float64) float64) number {
+	return func(r row) (float64, error) {
+		x, err := a(r)
+		if err != nil {
+			return 0, err
+		}
+		y, err := b(r)
+		if err != nil {
+			return 0, err
+		}
+		if z := f(x, y); !math.IsInf(z, 0) {
+			return z, nil
+		}
+		return math.NaN(), nil
+	}
+}
+
+func negate(a number) number {
+	return func(r row) (float64, error) {
+		x, err := a(r)
+		return -x, err
+	}
+}
+
+// both, either and opposite are the logic of three values: what an unknown
+// could not change is known.
+func both(a, b condition) condition {
+	return func(r row) (truth, error) {
+		x, err := a(r)
+		if err != nil || x == no {
+			return no, err
+		}
+		y, err := b(r)
+		if err != nil || y == no {
+			return no, err
+		}
+		return max(x, y), nil
+	}
+}
+
+func either(a, b condition) condition {
+	return func(r row) (truth, error) {
+		x, err := a(r)
+		if err != nil || x == yes {
+			return x, err
+		}
+		y, err := b(r)
+		if err != nil || y == yes {
+			return y, err
+		}
+		return max(x, y), nil
+	}
+}
+
+func opposite(a condition) condition {
+	return func(r row) (truth, error) {
+		x, err := a(r)
+		switch x {
+		case no:
+			x = yes
+		case yes:
+			x = no
+		}
+		return x, err
+	}
+}
+
+func truthOf(b bool) truth {
+	if b {
+		return yes
+	}
+	return no
 }

@@ -30,12 +30,14 @@ type Object struct {
 	Range     hcl.Range
 }
 
-// Cosmology is a background. OmegaLambda is 1 − OmegaMatter where the recipe
-// gives none.
+// Cosmology is a background. Where the recipe gives no omega_lambda, Flat is
+// set and OmegaLambda is 1 − OmegaMatter; with a CMB temperature the radiation
+// is still to be taken off it.
 type Cosmology struct {
 	HubbleConstant float64 // km/s/Mpc
 	OmegaMatter    float64
 	OmegaLambda    float64
+	Flat           bool
 	W0, Wa         float64
 	CMBTemperature float64 // K; 0 leaves photons out
 	Range          hcl.Range
