@@ -76,9 +76,8 @@ func readRadii(t *estimate.Task, table *catalogue.Table, bins []Bin) error {
 			return fmt.Errorf("%s: row %d: the bin begins at %.5g kpc, where the row before ends at %.5g kpc: the bins overlap", table.File, row, b.Inner, bins[i-1].Outer)
 		}
 		b.Nodes = areaNodes(b.Inner, b.Outer, areaCount(b.Inner, b.Outer))
-		for _, n := range b.Nodes {
-			b.Mean += n.Share * n.Radius
-		}
+		// The mean radius of an evenly filled annulus is ⅔ (b³−a³)/(b²−a²).
+		b.Mean = 2.0 / 3 * (b.Outer + b.Inner*b.Inner/(b.Outer+b.Inner))
 	}
 	return nil
 }
