@@ -139,14 +139,14 @@ const perRedshift = 1000
 // lens projects the halo between 1e-3 kpc and 30 Mpc. The sums err by 1e-5.
 func (t Truth) lens() *lens {
 	const n, inner, outer = 1600, 1e-3, 3e4
-	h := t.Halo()
+	h, path := t.Halo(), newPath()
 	l := &lens{redshift: t.Redshift, comoving: []float64{0}}
 	step := math.Log(outer/inner) / (n - 1)
 	var inside, last float64 // Σ R² integrated over ln R; its integrand
 	for i := range n {
 		lnR := math.Log(inner) + float64(i)*step
 		r := math.Exp(lnR)
-		surface := lineOfSight(h, r)
+		surface := path.surfaceDensity(h, r)
 		integrand := surface * r * r
 		if i == 0 {
 			inside = integrand / 2 // a flat core inside 1 pc
@@ -167,16 +167,27 @@ func (t Truth) lens() *lens {
 	return l
 }
 
-// lineOfSight adds up the density on both sides of the lens along the line at
-// R kpc, in steps of u with r = R cosh u, out to 1e8 R.
-func lineOfSight(h *Halo, R float64) float64 {
-	const step = 0.05
+// path is a line of sight in steps of u, with r = R cosh u at the distance R
+// from the centre and dl = R cosh u du: the values of cosh u, to 1e8.
+type path []float64
+
+const pathStep = 0.05
+
+func newPath() path {
+	var p path
+	for i := range 380 {
+		p = append(p, math.Cosh((float64(i)+0.5)*pathStep))
+	}
+	return p
+}
+
+// surfaceDensity adds up the density along the path on both sides of the lens.
+func (p path) surfaceDensity(h *Halo, R float64) float64 {
 	sum := 0.0
-	for u := step / 2; u < 19; u += step {
-		c := math.Cosh(u)
+	for _, c := range p {
 		sum += h.Density(R*c) * c
 	}
-	return 2 * R * sum * step
+	return 2 * R * sum * pathStep
 }
 
 // distance is the comoving distance to redshift z in kpc.
