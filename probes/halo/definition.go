@@ -57,45 +57,42 @@ const (
 )
 
 // RadiusAt returns the radius in kpc inside which the model's mean density is
-// threshold; an error when there is none.
+// threshold; an error when there is none between 1e-6 and 1e8 kpc.
 //
-// It solves ln M(r) = ln(4π/3 · threshold r³) in ln r by Newton's method, with
-// d ln M/d ln r = 4πr³ρ/M, kept between brackets that bisection narrows when a
-// step would leave them.
+// It finds the zero in ln r of the logarithm of mean density over threshold, whose
+// slope is 4πr³ρ/M − 3, by Newton's method between brackets; a step that would
+// leave them is replaced by bisection.
 func RadiusAt(m Model, threshold float64) (float64, error) {
 	if !(threshold > 0) || math.IsInf(threshold, 1) {
 		return 0, fmt.Errorf("halo: the mean density %g Msun/kpc3 is not a positive number", threshold)
 	}
-	target := math.Log(4 * math.Pi / 3 * threshold)
-	excess := func(s, r float64) (value, slope float64) {
-		mass := m.Mass(r)
-		return math.Log(mass) - 3*s - target, 4*math.Pi*r*r*r*m.Density(r)/mass - 3
+	excess := func(r, mass float64) float64 {
+		return math.Log(mass / (4 * math.Pi / 3 * threshold * r * r * r))
 	}
-	lo, hi := math.Log(smallestRadius), math.Log(largestRadius)
-	atLo, _ := excess(lo, smallestRadius)
-	atHi, _ := excess(hi, largestRadius)
-	if !(atLo >= 0 && atHi <= 0) {
-		return 0, fmt.Errorf("halo: no radius has the mean density %.3g Msun/kpc3 inside it", threshold)
+	lo, hi := smallestRadius, largestRadius
+	if !(excess(lo, m.Mass(lo)) >= 0 && excess(hi, m.Mass(hi)) <= 0) {
+		return 0, fmt.Errorf("halo: no radius has the mean density %.4g Msun/kpc3 inside it", threshold)
 	}
-	s := math.Log(1e3)
+	r := 1e3
 	for range 200 {
-		r := math.Exp(s)
-		value, slope := excess(s, r)
+		mass := m.Mass(r)
+		value := excess(r, mass)
 		if value > 0 {
-			lo = s
+			lo = r
 		} else {
-			hi = s
+			hi = r
 		}
-		next := s - value/slope
-		if !(next > lo && next < hi) {
-			next = (lo + hi) / 2
+		step := value / (3 - 4*math.Pi*r*r*r*m.Density(r)/mass)
+		next := r * math.Exp(step)
+		switch {
+		case math.Abs(step) < 1e-8: // the error left is of the order of the step squared
+			return next, nil
+		case !(next > lo && next < hi):
+			next = math.Sqrt(lo * hi)
 		}
-		if math.Abs(next-s) < 1e-15*math.Max(1, math.Abs(s)) {
-			return math.Exp(next), nil
-		}
-		s = next
+		r = next
 	}
-	return math.Exp(s), nil
+	return 0, fmt.Errorf("halo: the radius with the mean density %.4g Msun/kpc3 inside it was not found", threshold)
 }
 
 // Convert returns the mass in Msun and the radius in kpc that the definition

@@ -25,3 +25,14 @@ type Model interface {
 	Potential(r float64) float64            // (km/s)²; zero at infinity where the mass is finite or falls fast enough
 	EscapeSpeed(r float64) float64          // km/s
 }
+
+// Projected returns Σ(R) and its mean inside R. For models that can, it computes
+// both at little more than the price of one.
+func Projected(m Model, R float64) (surface, mean float64) {
+	if p, ok := m.(interface {
+		Projected(R float64) (surface, mean float64)
+	}); ok {
+		return p.Projected(R)
+	}
+	return m.SurfaceDensity(R), m.MeanSurfaceDensity(R)
+}

@@ -39,41 +39,11 @@ func nfwMass(x float64) float64 {
 	return sum * t * t
 }
 
-// nfwArc is arccosh(1/x)/√(1−x²) below x = 1 and arccos(1/x)/√(x²−1) above.
-// In u = (1−x)/(1+x) it is (1+u)(1 + u/3 + u²/5 + …), analytic through x = 1.
-func nfwArc(x float64) float64 {
-	switch {
-	case math.Abs(x-1) < nfwNear:
-		u := (1 - x) / (1 + x)
-		return (1 + u) * (1 + u*(1.0/3+u*(1.0/5+u*(1.0/7+u*(1.0/9+u*(1.0/11+u*(1.0/13+u/15)))))))
-	case x < 1:
-		q := math.Sqrt((1 - x) * (1 + x))
-		return math.Log((1+q)/x) / q
-	default:
-		q := math.Sqrt((x - 1) * (x + 1))
-		return math.Atan(q) / q
-	}
-}
-
-// nfwNear is the distance from x = 1 within which series are used: |u| < 0.0152.
-const nfwNear = 0.03
-
-// nfwSurface is f = (1−A)/(x²−1) with A of nfwArc: Σ in units of 2ρ_s r_s.
-func nfwSurface(x, arc float64) float64 {
-	if math.Abs(x-1) < nfwNear {
-		// f = (1+u)²/4 · Σ (4k+4)/((2k+1)(2k+3)) u^k
-		u := (1 - x) / (1 + x)
-		s := 4.0/3 + u*(8.0/15+u*(12.0/35+u*(16.0/63+u*(20.0/99+u*(24.0/143+u*(28.0/195+u*32.0/255))))))
-		return (1 + u) * (1 + u) / 4 * s
-	}
-	return (1 - arc) / ((x - 1) * (x + 1))
-}
-
-// nfwProjected is g/x², with g = ln(x/2) + A the projected mass in units of
+// nfwProjected is g/x², with g = ln(x/2) + A(x) the projected mass in units of
 // 4πρ_s r_s³: the mean surface density in units of 4ρ_s r_s.
-func nfwProjected(x, arc float64) float64 {
+func nfwProjected(x, a float64) float64 {
 	if x > 0.3 {
-		return (math.Log(x/2) + arc) / (x * x)
+		return (math.Log(x/2) + a) / (x * x)
 	}
 	// With q = √(1−x²) and L = ln(2/x) the leading terms of g cancel in
 	// g = [L x²/(1+q) + ln(1 − x²/(2(1+q)))]/q.
@@ -96,15 +66,15 @@ func (h NFW) Mass(r float64) float64 {
 // Projected returns Σ(R) and its mean inside R for little more than the price of one.
 func (h NFW) Projected(R float64) (surface, mean float64) {
 	x := R / h.Rs
-	arc := nfwArc(x)
+	a := arc(x)
 	scale := 2 * h.RhoS * h.Rs
-	return scale * nfwSurface(x, arc), 2 * scale * nfwProjected(x, arc)
+	return scale * surfaceFactor(x, a), 2 * scale * nfwProjected(x, a)
 }
 
 // SurfaceDensity is Σ(R).
 func (h NFW) SurfaceDensity(R float64) float64 {
 	x := R / h.Rs
-	return 2 * h.RhoS * h.Rs * nfwSurface(x, nfwArc(x))
+	return 2 * h.RhoS * h.Rs * surfaceFactor(x, arc(x))
 }
 
 // MeanSurfaceDensity is the mean of Σ inside R.
