@@ -1,0 +1,95 @@
+package xray
+
+import (
+	"fmt"
+
+	"steelyard/probes/infer"
+)
+
+// poorFit is the p-value below which a fit is called poor.
+const poorFit = 1e-3
+
+// coolGas is the temperature in keV below which the spectroscopic-like weight
+// is not calibrated (Mazzotta et al. 2004, section 3).
+const coolGas = 3
+
+// assumes says in words what the masses rest on.
+func (m *backwardModel) assumes() []string {
+	outer := m.spectra.Outer[m.spectra.Len()-1]
+	lines := []string{
+		"gas in hydrostatic equilibrium in a spherical NFW halo",
+		m.gas.describe(2 * outer),
+		fmt.Sprintf("thermal pressure free at %.4g kpc, where the temperatures end; beyond, the same share of the weight of the gas above holds", outer),
+	}
+	if m.spectra.Projected {
+		lines = append(lines, "temperatures projected along the whole line of sight with the spectroscopic-like weight n² T^(-3/4) (Mazzotta et al. 2004)")
+	} else {
+		lines = append(lines, "temperatures taken as those of spherical shells (projected = false)")
+	}
+	for _, name := range []string{"concentration", "outer_pressure_ratio", "temperature_scale", "temperature_scatter", "nonthermal_fraction", "mean_molecular_weight", "intrinsic_scatter"} {
+		v := m.task.Settings[name]
+		switch {
+		case !v.Set:
+			continue
+		case v.Relation != "":
+			lines = append(lines, fmt.Sprintf("%s = relation(%q)", name, v.Relation))
+		case v.Nuisance != "":
+			lines = append(lines, fmt.Sprintf("%s = nuisance.%s, %s", name, v.Nuisance, v.Prior))
+		default:
+			lines = append(lines, fmt.Sprintf("%s = %s", name, v.Prior))
+		}
+	}
+	return lines
+}
+
+// describe says where the density comes from, how well it fits, and how it goes
+// on at r kpc, beyond the data.
+func (g *Gas) describe(r float64) string {
+	slope, sd := g.Slope(r)
+	s := "density: " + g.Words
+	if g.Shells > 0 {
+		s += fmt.Sprintf(" fitted to %d shells, χ² = %.1f for %d degrees of freedom", g.Shells, g.Chi2, g.Dof)
+	}
+	s += fmt.Sprintf("; its logarithmic slope is %.2f", slope)
+	if sd > 0 {
+		s += fmt.Sprintf(" ± %.2f", sd)
+	}
+	return s + fmt.Sprintf(" at %.4g kpc", r)
+}
+
+// warnings lists what the reader must know about the data and the fit.
+func (m *backwardModel) warnings(q bestFit) []string {
+	var w []string
+	s, g, n := m.spectra, m.gas, m.spectra.Len()
+	w = append(append(w, g.Notes...), s.Notes...)
+	if q.dof > 0 && q.pValue < poorFit {
+		line := fmt.Sprintf("the fit is poor with the quoted temperature errors alone: χ² = %.0f for %d degrees of freedom (p = %.1g)", q.chi2, q.dof, q.pValue)
+		if m.scatter.Drawn() {
+			line += "; the temperature scatter drawn with the mass makes up for it"
+		}
+		w = append(w, line)
+	}
+	if n <= m.fitted {
+		w = append(w, fmt.Sprintf("%d temperature bins for %d free parameters: the result leans on the priors", n, m.fitted))
+	}
+	if kT := s.coolest(); kT < coolGas {
+		w = append(w, fmt.Sprintf("the coolest bin has kT = %.2g keV; below %d keV the weight that turns gas into a spectral temperature is not calibrated", kT, coolGas))
+	}
+	if g.Shells > 0 {
+		if g.Dof > 0 {
+			if p := infer.ChiSquareSurvival(g.Chi2, g.Dof); p < poorFit {
+				w = append(w, fmt.Sprintf("the density form fits the shells poorly: χ² = %.0f for %d degrees of freedom (p = %.1g); its error is too small", g.Chi2, g.Dof, p))
+			}
+		}
+		if g.Outer < s.Outer[n-1]*(1-touching) {
+			w = append(w, fmt.Sprintf("the density shells end at %.4g kpc, inside the temperature bins, which end at %.4g kpc: the density between is extrapolated", g.Outer, s.Outer[n-1]))
+		}
+		if g.Inner > s.Outer[0] {
+			w = append(w, fmt.Sprintf("the density shells begin at %.4g kpc, outside the first temperature bin, which ends at %.4g kpc: the density inside is extrapolated", g.Inner, s.Outer[0]))
+		}
+	}
+	if slope, _ := g.Slope(2 * s.Outer[n-1]); slope > -1.2 || slope < -4.5 {
+		w = append(w, fmt.Sprintf("beyond the temperatures the density falls as r^(%.1f); clusters have r^(-2) to r^(-3) there, and the outer bins see this gas along the line of sight", slope))
+	}
+	return w
+}
