@@ -30,6 +30,12 @@ func (l *loader) attributeTerm(a *hclsyntax.Attribute) term {
 	return t
 }
 
+// has reports whether a setting is given, if only under a misspelt name, so
+// that it is not reported as missing as well.
+func (l *loader) has(b *hclsyntax.Body, name string) bool {
+	return b.Attributes[name] != nil || slices.Contains(l.meant[b], name)
+}
+
 // attribute returns the value of the named attribute, if it is given.
 func (l *loader) attribute(b *hclsyntax.Body, name string) (t term, given bool) {
 	a := b.Attributes[name]
@@ -44,8 +50,8 @@ type vocabulary struct {
 	block    string // how messages call the block
 	settings []string
 	blocks   []string
-	planned  []string                     // blocks and settings that are not built yet
-	explain  func(name string) (p string) // why another setting does not belong here; "" for no idea
+	planned  []string                 // blocks and settings that are not built yet
+	explain  func(name string) string // why something else does not belong here; "" for no idea
 }
 
 // check reports everything in a body that the vocabulary does not have.
@@ -53,6 +59,9 @@ func (l *loader) check(b *hclsyntax.Body, v vocabulary) {
 	for _, a := range sorted(b) {
 		if slices.Contains(v.settings, a.Name) {
 			continue
+		}
+		if near := nearest(a.Name, v.settings); near != "" {
+			l.meant[b] = append(l.meant[b], near)
 		}
 		p := problem{at: a.NameRange, what: fmt.Sprintf("%s has no setting %s", v.block, a.Name)}
 		switch {
@@ -82,11 +91,15 @@ func (l *loader) check(b *hclsyntax.Body, v vocabulary) {
 		case slices.Contains(v.settings, inner.Type):
 			p.what, p.write = fmt.Sprintf("%s is a setting, not a block", inner.Type), fmt.Sprintf("Write %s = … .", inner.Type)
 		default:
-			p.write = didYouMean(inner.Type, v.blocks, "%s")
-			if p.write == "" || nearest(inner.Type, v.blocks) == "" {
-				if near := nearest(inner.Type, v.settings); near != "" {
-					p.write = fmt.Sprintf("Did you mean the setting %s?", near)
-				}
+			if v.explain != nil {
+				p.why = v.explain(inner.Type)
+			}
+			near := nearest(inner.Type, v.settings)
+			switch {
+			case nearest(inner.Type, v.blocks) == "" && near != "":
+				p.write = fmt.Sprintf("Did you mean the setting %s?", near)
+			case p.why == "":
+				p.write = didYouMean(inner.Type, v.blocks, "%s")
 			}
 		}
 		l.add(p)
@@ -117,28 +130,23 @@ func (l *loader) name(b *hclsyntax.Block, example string) string {
 	return label(b)
 }
 
-// once keeps of the blocks with equal type and labels the first, and reports
-// the others.
-func (l *loader) once(blocks hclsyntax.Blocks, in string) []*hclsyntax.Block {
+// once reports blocks with the type and labels of an earlier one.
+func (l *loader) once(blocks hclsyntax.Blocks, in string) {
 	first := map[string]*hclsyntax.Block{}
-	var kept []*hclsyntax.Block
 	for _, b := range blocks {
 		key := (&declared{block: b}).key()
 		if first[key] == nil {
 			first[key] = b
-			kept = append(kept, b)
 			continue
 		}
 		l.add(problem{at: b.DefRange(), what: fmt.Sprintf("%s has a second %s", in, title(b)), why: fmt.Sprintf("The first is at %s.", l.where(first[key].DefRange()))})
 	}
-	return kept
 }
 
 // require reports a setting that is not given.
 func (l *loader) require(b *hclsyntax.Body, at hcl.Range, block, name, why, write string) bool {
-	if b.Attributes[name] != nil {
-		return true
+	if !l.has(b, name) {
+		l.add(problem{at: at, absence: true, what: fmt.Sprintf("%s needs %s", block, name), why: why, write: write})
 	}
-	l.add(problem{at: at, absence: true, what: fmt.Sprintf("%s needs %s", block, name), why: why, write: write})
-	return false
+	return b.Attributes[name] != nil
 }

@@ -31,6 +31,7 @@ func (l *loader) readAll(path string) *source {
 			if realPath(open) == real {
 				l.add(problem{at: *from, what: "the files include each other in a circle",
 					why: strings.Join(append(append([]string{}, stack[i:]...), name), " includes ") + ".", write: "Take one of these includes out."})
+				l.damaged = true
 				return nil
 			}
 		}
@@ -40,6 +41,7 @@ func (l *loader) readAll(path string) *source {
 		s := l.readSource(name, from)
 		read[real] = s
 		if s == nil {
+			l.damaged = true
 			return nil
 		}
 		l.recipe.Files = append(l.recipe.Files, name)
@@ -120,14 +122,16 @@ func (l *loader) merged(top *source) []*declared {
 				l.add(problem{at: b.TypeRange, what: "an included file cannot declare the object", write: "Write the object block in the recipe."})
 				continue
 			}
+			all = append(all, d) // a second one is read for its mistakes
 			first := at[d.key()]
 			if first == nil {
 				at[d.key()] = d
-				all = append(all, d)
 				continue
 			}
-			l.add(problem{at: b.DefRange(), what: fmt.Sprintf("%s is declared twice", title(b)), why: fmt.Sprintf("It was declared already at %s.", l.where(first.block.DefRange())),
-				write: "Give one of them another name, or put their contents into one block."})
+			if !single[b.Type] {
+				l.add(problem{at: b.DefRange(), what: fmt.Sprintf("%s is declared twice", title(b)), why: fmt.Sprintf("It was declared already at %s.", l.where(first.block.DefRange())),
+					write: "Give one of them another name, or put their contents into one block."})
+			}
 		}
 		replaced := map[string]bool{}
 		for _, d := range all {
@@ -172,20 +176,21 @@ func (l *loader) singles(blocks []*declared) {
 		if !single[b.Type] {
 			continue
 		}
-		if b.Type != "object" && len(b.Labels) > 0 {
-			l.add(problem{at: b.LabelRanges[0], what: fmt.Sprintf("%s has no name", b.Type), write: fmt.Sprintf("Write %s { … }.", b.Type)})
-		}
 		if first[b.Type] == nil {
 			first[b.Type] = b
+			if b.Type != "object" && len(b.Labels) > 0 {
+				l.add(problem{at: b.LabelRanges[0], what: fmt.Sprintf("%s has no name", b.Type), write: fmt.Sprintf("Write %s { … }.", b.Type)})
+			}
 			continue
 		}
 		p := problem{at: b.DefRange(), what: fmt.Sprintf("there is a second %s", b.Type), why: fmt.Sprintf("The first is at %s.", l.where(first[b.Type].DefRange()))}
+		p.write = "Keep one of the two."
 		if b.Type == "object" {
 			p.write = "A recipe weighs one object; write another recipe for the other."
 		}
 		l.add(p)
 	}
-	if first["object"] == nil {
+	if first["object"] == nil && len(blocks) > 0 {
 		l.missing("no object is declared", "", "Write object \"name\" { … } with redshift = … and centre = sky(…, …).")
 	}
 }

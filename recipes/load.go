@@ -19,7 +19,7 @@ import (
 func Load(path string, probes []method.Probe, reported []method.Setting) (*Recipe, Diagnostics) {
 	l := &loader{
 		report: newReport(), recipe: &Recipe{File: path}, probes: probes, reported: reportedSettings(reported),
-		terms: map[*hclsyntax.Attribute]term{}, nuisances: map[string]*Nuisance{}, nuisanceTerms: map[string]term{}, used: map[string]bool{},
+		terms: map[*hclsyntax.Attribute]term{}, meant: map[*hclsyntax.Body][]string{}, nuisances: map[string]*Nuisance{}, nuisanceTerms: map[string]term{}, used: map[string]bool{},
 	}
 	if top := l.readAll(path); top != nil {
 		l.declare(l.merged(top))
@@ -39,6 +39,7 @@ type loader struct {
 	reported []method.Setting
 
 	terms         map[*hclsyntax.Attribute]term // each read once, so that its mistakes are reported once
+	meant         map[*hclsyntax.Body][]string  // settings given under a misspelt name
 	nuisances     map[string]*Nuisance          // by name; nil for one that could not be read
 	nuisanceTerms map[string]term
 	used          map[string]bool // nuisances that something refers to
@@ -60,6 +61,9 @@ var single = map[string]bool{"object": true, "cosmology": true, "sampling": true
 // everything referred to is known before it is needed.
 func (l *loader) declare(blocks []*declared) {
 	l.blocks = blocks
+	if len(blocks) == 0 {
+		l.missing("the recipe declares nothing", "", "Write at least object \"name\" { … }, cosmology { … } and one xray, lensing, dynamics or reported block.")
+	}
 	l.noteUses()
 	readers := []reader{
 		{"object", l.object},
@@ -129,6 +133,9 @@ func (l *loader) missing(what, why, write string) {
 
 // wholeRecipe checks what only the recipe as a whole can tell.
 func (l *loader) wholeRecipe() {
+	if len(l.blocks) == 0 {
+		return // reported as a whole
+	}
 	if l.first("cosmology") == nil {
 		l.missing("no cosmology is stated", "Every mass depends on it.", "Write cosmology { … } with hubble_constant = \"70 km/s/Mpc\" and omega_matter = 0.3, or whichever background is meant.")
 	}
@@ -143,14 +150,14 @@ func (l *loader) wholeRecipe() {
 		l.missing("nothing is declared to weigh the object by", "", "Write at least one xray, lensing, dynamics or reported block.")
 	}
 	if l.centreFor.Filename != "" && !l.recipe.Object.HasCentre {
-		if o := l.first("object"); o != nil && o.Body.Attributes["centre"] == nil {
+		if o := l.first("object"); o != nil && !l.has(o.Body, "centre") {
 			l.add(problem{at: o.DefRange(), absence: true, what: "the object needs its centre",
 				why:   fmt.Sprintf("The positions read at %s are taken relative to it.", l.where(l.centreFor)),
 				write: "Write centre = sky(\"14h01m02.1s\", \"+02d52m42s\"), or in degrees: sky(210.2588, 2.8783)."})
 		}
 	}
 	for _, d := range l.blocks {
-		if name := label(d.block); d.block.Type == "nuisance" && !l.used[name] && d.own {
+		if name := label(d.block); d.block.Type == "nuisance" && !l.used[name] && d.own && l.nuisances[name] != nil {
 			l.add(problem{at: d.block.DefRange(), warning: true, what: fmt.Sprintf("nuisance.%s is never used", name),
 				write: fmt.Sprintf("Refer to it as nuisance.%s where it matters, or leave it out.", name)})
 		}

@@ -48,7 +48,7 @@ func didYouMean(name string, list []string, format string) string {
 	if len(list) == 0 || len(list) > 16 {
 		return ""
 	}
-	return "Possible here: " + enumerate(list, format, "and") + "."
+	return "Possible here: " + enumerate(list, format, "or") + "."
 }
 
 // enumerate writes "a", "b" and "c".

@@ -27,7 +27,7 @@ func (l *loader) object(b *hclsyntax.Block) {
 		} else if s, ok := l.exactScalar(t, pure, "redshift"); ok {
 			switch {
 			case s.value <= 0:
-				l.add(problem{at: t.at, what: "the redshift must be positive", why: "Distances are taken from it. For an object too near for that, no lens or cluster mass is computed here."})
+				l.add(problem{at: t.at, what: "the redshift must be positive", why: "The distance is computed from it."})
 			case s.value > 20:
 				l.add(problem{at: t.at, what: fmt.Sprintf("%s is no redshift of an object with galaxies and gas", short(s.value)), why: "A velocity must be divided by the speed of light, 299792.458 km/s."})
 			default:
@@ -74,7 +74,7 @@ func (l *loader) background1(b *hclsyntax.Block) (Cosmology, bool) {
 		ok = ok && good
 		*into[i] = v.Prior.A
 	}
-	if b.Body.Attributes["omega_lambda"] == nil && ok {
+	if !l.has(b.Body, "omega_lambda") && ok {
 		c.Flat = true
 		c.OmegaLambda = l.oneMinus(b.Body.Attributes["omega_matter"], c.OmegaMatter)
 	}

@@ -14,7 +14,8 @@ type Predicate struct {
 	text       string
 	names      []string
 	quantities []quantity
-	bound      []float64 // the quantities in the units of their columns
+	bound      []float64 // the quantities in the units of their columns; nil before Bind
+	distance   float64   // kpc, 0 when not given
 	test       condition
 }
 
@@ -23,7 +24,8 @@ type quantity struct {
 	column int // index into names
 	text   string
 	value  units.Quantity
-	unit   string // of the column, as far as it is known
+	unit   string // of the column, as far as the recipe states it
+	apart  bool   // whether that unit is of length and the quantity's of angle, or the other way round
 }
 
 // row is what a condition is evaluated on: the values of the columns and the
@@ -55,16 +57,25 @@ func (p *Predicate) Text() string { return p.text }
 // each once and in the order Keep takes their values.
 func (p *Predicate) Names() []string { return p.names }
 
-// Quantities returns those of Names that are compared with a quantity and whose
-// unit the recipe does not state: they need Bind.
+// Quantities returns those of Names that are compared with a quantity that is
+// not converted yet: the recipe does not state their unit, or a length is
+// compared with an angle. They need Bind.
 func (p *Predicate) Quantities() []string {
 	var names []string
 	for _, q := range p.quantities {
-		if name := p.names[q.column]; q.unit == "" && !slices.Contains(names, name) {
+		if name := p.names[q.column]; p.bound == nil && (q.unit == "" || q.apart) && !slices.Contains(names, name) {
 			names = append(names, name)
 		}
 	}
 	return names
+}
+
+// WithDistance returns the predicate for an object at an angular-diameter
+// distance in kpc, with which Bind converts lengths to angles and back.
+func (p *Predicate) WithDistance(kpc float64) *Predicate {
+	b := *p
+	b.distance = kpc
+	return &b
 }
 
 // Bind returns the predicate with its quantities converted to the units that
@@ -75,24 +86,47 @@ func (p *Predicate) Bind(unit func(column string) string) (*Predicate, error) {
 	b.bound = make([]float64, len(p.quantities))
 	for i, q := range p.quantities {
 		name := p.names[q.column]
-		text := q.unit
-		if text == "" {
-			text = unit(name)
+		if q.unit == "" {
+			q.unit = unit(name)
 		}
-		if text == "" {
+		if q.unit == "" {
 			return nil, fmt.Errorf("select: the column %s is compared with %q and has no unit: state it in the file or in the recipe, or compare with a plain number", name, q.text)
 		}
-		u, err := units.Parse(text)
+		u, err := units.Parse(q.unit)
 		if err != nil {
 			return nil, fmt.Errorf("select: the unit of the column %s: %w", name, err)
 		}
-		x, _, _, err := q.value.In(u)
-		if err != nil {
+		if b.bound[i], err = q.in(u, p.distance); err != nil {
 			return nil, fmt.Errorf("select: the column %s is compared with %q: %w", name, q.text, err)
 		}
-		b.bound[i] = x
 	}
 	return &b, nil
+}
+
+// apart reports whether one of two units is of length and the other of angle.
+func apart(a, b units.Unit) bool {
+	return a.IsLength() && b.IsAngle() || a.IsAngle() && b.IsLength()
+}
+
+// in converts a quantity to a unit, an angle to a length and back with the
+// distance in kpc, 0 for one that is not known.
+func (q quantity) in(u units.Unit, distance float64) (float64, error) {
+	if !apart(q.value.Unit, u) {
+		x, _, _, err := q.value.In(u)
+		return x, err
+	}
+	if distance <= 0 {
+		return 0, fmt.Errorf("an angle and a length can only be compared at a known distance")
+	}
+	here, there, factor := units.MustParse("rad"), units.MustParse("kpc"), distance
+	if q.value.Unit.IsLength() {
+		here, there, factor = there, here, 1/distance
+	}
+	x, _, _, err := q.value.In(here)
+	if err != nil {
+		return 0, err
+	}
+	return units.Convert(x*factor, there, u)
 }
 
 // Keep reports whether a row passes. The values stand in the order of Names and

@@ -2,6 +2,7 @@ package recipes
 
 import (
 	"fmt"
+	"slices"
 
 	"steelyard/probes/prior"
 )
@@ -132,17 +133,16 @@ func (l *loader) count(t term, names []string, least int) bool {
 
 // notAPrior reports a call of a function that states no prior.
 func (l *loader) notAPrior(t term, name string) {
-	for _, known := range functions {
-		if t.name == known {
-			l.add(problem{at: t.at, what: fmt.Sprintf("%s does not take %s", name, t.describe()), write: "Write a number, or a prior such as normal(mean, sd)."})
-			return
-		}
+	if slices.Contains(functions, t.name) {
+		l.add(problem{at: t.at, what: fmt.Sprintf("%s does not take %s", name, t.describe()), write: "Write a number, or a prior such as normal(mean, sd)."})
+		return
 	}
-	l.unknownFunction(t)
+	l.unknownFunction(t, "normal", "half_normal", "lognormal", "uniform", "loguniform")
 }
 
-// unknownFunction reports a function that the language does not have.
-func (l *loader) unknownFunction(t term) {
-	write := didYouMean(t.name, functions, "%s(…)")
+// unknownFunction reports a function that the language does not have; possible
+// are those that could stand in its place.
+func (l *loader) unknownFunction(t term, possible ...string) {
+	write := didYouMean(t.name, possible, "%s(…)")
 	l.add(problem{at: t.nameAt, what: fmt.Sprintf("there is no function %s", t.name), write: write})
 }

@@ -48,7 +48,15 @@ func standard(u units.Unit) string {
 			return name
 		}
 	}
+	if _, err := units.Parse(u.String()); err != nil { // too long when written out
+		return ""
+	}
 	return u.String()
+}
+
+// measuredExamples shows a quantity of each kind with its error.
+var measuredExamples = map[string]string{
+	"kpc": "1.5 +- 0.1 Mpc", "rad": "18.4 +- 0.6 arcsec", "solMass": "6.1 +- 0.8 10**14 solMass", "km/s": "970 +- 30 km/s", "keV": "6.5 +- 0.4 keV",
 }
 
 // example returns a quantity of the measure as a recipe writes it.
@@ -102,7 +110,7 @@ func (l *loader) scalar(t term, m measure, name string) (scalar, bool) {
 		x := float(t.number)
 		if m.unit != "" && x != 0 {
 			l.add(problem{at: t.at, what: fmt.Sprintf("%s needs a unit", name),
-				why: fmt.Sprintf("It is %s; a number alone does not say in which unit.", m.describe()), write: "Write it like " + m.example() + "."})
+				why: "A number alone does not say in which unit it is.", write: "Write it like " + m.example() + "."})
 			return scalar{}, false
 		}
 		return scalar{value: x, unit: m.unit, bare: m.unit != ""}, true
@@ -132,7 +140,7 @@ func (l *loader) quantity(t term, m measure, name string) (scalar, bool) {
 		p := problem{at: t.at, what: fmt.Sprintf("%s is %s, not %s", name, m.describe(), withArticle(q.Unit.Describe())), write: "Write it like " + m.example() + "."}
 		if !q.HasUnit {
 			p.what = fmt.Sprintf("%s needs a unit", name)
-			p.why = fmt.Sprintf("It is %s; a number alone does not say in which unit.", m.describe())
+			p.why = "A number alone does not say in which unit it is."
 		}
 		l.add(p)
 		return scalar{}, false

@@ -29,7 +29,7 @@ func (l *loader) reconcile(b *hclsyntax.Block) {
 	case given && t.kind == textTerm && t.text == "own":
 		out.RadiiFrom = "own"
 	case given && t.kind == textTerm:
-		l.notAReference(t, "whose radii are taken, by reference or \"own\"")
+		l.notAReference(t, "radii_from is a reference, or \"own\"")
 	case given:
 		out.RadiiFrom, _ = l.estimateName(t)
 	case overdensities:
@@ -75,7 +75,7 @@ func (l *loader) estimateName(t term) (string, bool) {
 		return "", false
 	case referenceTerm:
 	default:
-		l.notAReference(t, "an estimate, named by reference")
+		l.notAReference(t, "an estimate is named by reference")
 		return "", false
 	}
 	name := strings.Join(t.path, ".")
@@ -108,19 +108,12 @@ func (l *loader) estimateName(t term) (string, bool) {
 }
 
 // notAReference reports a term that should have been a reference.
-func (l *loader) notAReference(t term, expected string) {
-	p := problem{at: t.at, what: fmt.Sprintf("%s is not %s", capitalText(t), expected), write: "Write it like lensing.shapes.nfw, without quotes."}
+func (l *loader) notAReference(t term, what string) {
+	p := problem{at: t.at, what: what, write: "Write it like lensing.shapes.nfw, without quotes."}
 	if t.kind == textTerm && slices.Contains(l.estimateNames(), t.text) {
 		p.write = fmt.Sprintf("Write %s without quotes.", t.text)
 	}
 	l.add(p)
-}
-
-func capitalText(t term) string {
-	if t.kind == textTerm {
-		return fmt.Sprintf("%q", t.text)
-	}
-	return t.describe()
 }
 
 // estimateNames returns the full names of all estimates of the recipe, readable
@@ -200,7 +193,7 @@ func (l *loader) radius(t term) (a At, ok bool) {
 		return a, ok
 	case t.kind == callTerm:
 		if !slices.Contains(functions, t.name) {
-			l.unknownFunction(t)
+			l.unknownFunction(t, "overdensity", "radius")
 			return a, false
 		}
 	case t.kind == numberTerm:

@@ -49,7 +49,8 @@ func (l *loader) reportedBlock(b *hclsyntax.Block) {
 	out := Reported{Name: l.name(b, "earlier"), Settings: method.Settings{}, Range: b.DefRange()}
 	l.check(b.Body, vocabulary{block: "reported", settings: settingNames(l.reported), blocks: []string{"cosmology"}})
 	recipes := l.background
-	for _, inner := range l.once(b.Body.Blocks, title(b)) {
+	l.once(b.Body.Blocks, title(b))
+	for _, inner := range b.Body.Blocks {
 		if inner.Type != "cosmology" {
 			continue
 		}
@@ -62,7 +63,7 @@ func (l *loader) reportedBlock(b *hclsyntax.Block) {
 	for _, s := range l.reported {
 		t, given := l.attribute(b.Body, s.Name)
 		if !given {
-			l.byDefault(out.Settings, s, b.DefRange(), "reported")
+			l.byDefault(out.Settings, s, b, "reported")
 			continue
 		}
 		if v, ok := l.value(t, s); ok {
@@ -74,10 +75,10 @@ func (l *loader) reportedBlock(b *hclsyntax.Block) {
 
 	radius, overdensity := b.Body.Attributes["radius"], b.Body.Attributes["overdensity"]
 	switch {
-	case radius == nil && overdensity == nil:
-		l.add(problem{at: b.DefRange(), absence: true, what: "reported needs overdensity or radius", why: "A mass is that within some radius.", write: "Write overdensity = 500, or radius = \"1 Mpc\"."})
+	case !l.has(b.Body, "radius") && !l.has(b.Body, "overdensity"):
+		l.add(problem{at: b.DefRange(), absence: true, what: "reported needs overdensity or radius", why: "A mass is that inside some radius.", write: "Write overdensity = 500, or radius = \"1 Mpc\"."})
 	case radius != nil && overdensity != nil:
-		l.add(problem{at: later(radius, overdensity).NameRange, what: "radius and overdensity, given together, contradict each other", write: "Keep the one within which the mass was quoted."})
+		l.add(problem{at: later(radius, overdensity).NameRange, what: "radius and overdensity cannot be given together", write: "Keep the one within which the mass was quoted."})
 	}
 	if a := b.Body.Attributes["projected"]; a != nil && out.Settings["projected"].Flag && radius == nil && overdensity != nil {
 		l.add(problem{at: a.SrcRange, what: "a projected mass is quoted within a radius", why: "An overdensity is that of a sphere.", write: "Write radius = \"1 Mpc\" instead of the overdensity."})

@@ -16,7 +16,7 @@ func (l *loader) sky(t term) (ra, dec float64, ok bool) {
 		return 0, 0, false
 	}
 	if t.kind == callTerm && t.name != "sky" && nearest(t.name, functions) == "sky" {
-		l.unknownFunction(t)
+		l.unknownFunction(t, "sky")
 		return 0, 0, false
 	}
 	if !t.is("sky") {

@@ -44,7 +44,11 @@ func (r *report) readSource(name string, from *hcl.Range) *source {
 	var path *fs.PathError
 	switch {
 	case errors.Is(err, fs.ErrNotExist):
-		return refer(fmt.Sprintf("the file %s does not exist", name), "", nearestFile(name))
+		why := ""
+		if from != nil {
+			why = "Files are looked for relative to the file that names them."
+		}
+		return refer(fmt.Sprintf("the file %s does not exist", name), why, nearestFile(name))
 	case errors.As(err, &path):
 		return refer(fmt.Sprintf("the file %s cannot be read: %v", name, path.Err), "", "")
 	case err != nil:

@@ -2,6 +2,7 @@ package recipes
 
 import (
 	"fmt"
+	"regexp"
 	"strings"
 	"unicode"
 	"unicode/utf8"
@@ -29,7 +30,10 @@ func (r *report) syntax(file string, diags hcl.Diagnostics) {
 				r.broken[file] = true
 			}
 		}
-		if !lines[p.at.Start.Line] { // of several on one line the first says what is wrong
+		// Of several on one line the first says what is wrong, and a quote
+		// that is missing makes every line behind it look wrong.
+		follows := strings.Contains(d.Summary, "multi-line") && lines[p.at.Start.Line-1]
+		if !lines[p.at.Start.Line] && !follows {
 			r.add(p)
 		}
 		lines[p.at.Start.Line] = true
@@ -61,6 +65,11 @@ func (r *report) plainly(d *hcl.Diagnostic) (what, why, write string) {
 	case "Missing newline after block definition":
 		return "something follows behind the closing brace", "", "Begin a new line behind }."
 	case "Invalid expression", "Missing expression":
+		if d.Subject != nil {
+			if text := r.texts[d.Subject.Filename].line(d.Subject.Start.Line); leadingPoint.MatchString(text) {
+				return "a number begins with a digit", "", "Write 0" + leadingPoint.FindStringSubmatch(text)[1] + "."
+			}
+		}
 		return "a value is missing or cannot be read here", "", "Write a number, a text in quotes, a function such as normal(0, 0.1), a reference such as nuisance.name, or a list in brackets."
 	case "Invalid multi-line string", "Unterminated string literal", "Unterminated template string":
 		return "the closing quote is missing", "", "End the text with \" on the same line."
@@ -73,6 +82,9 @@ func (r *report) plainly(d *hcl.Diagnostic) (what, why, write string) {
 	}
 	return lowerFirst(d.Summary), strings.NewReplacer("argument", "setting", "Argument", "Setting").Replace(d.Detail), ""
 }
+
+// leadingPoint finds a number without its zero, as in "x = .5".
+var leadingPoint = regexp.MustCompile(`=\s*-?(\.\d+)`)
 
 // firstPlace finds the place in "…was already set at FILE:LINE,COL-COL. Each…".
 func firstPlace(detail string) string {

@@ -112,10 +112,6 @@ func (r *report) term(e hclsyntax.Expression) term {
 		return refuse("a recipe declares, it does not compute", "Write the value out.")
 	case *hclsyntax.ExprSyntaxError:
 		return bad // the parser reported it
-	case *hclsyntax.RelativeTraversalExpr:
-		if text := r.written(e.Range()); strings.HasPrefix(text, ".") {
-			return refuse("a number begins with a digit", "Write 0"+text+".")
-		}
 	}
 	return refuse("this is not a value", "Write a number, a text in quotes, a function such as normal(0, 0.1), a reference such as nuisance.name, or a list in brackets.")
 }

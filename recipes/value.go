@@ -7,8 +7,6 @@ import (
 	"strconv"
 	"strings"
 
-	"github.com/hashicorp/hcl/v2"
-
 	"steelyard/probes/method"
 	"steelyard/probes/prior"
 	"steelyard/probes/units"
@@ -97,7 +95,10 @@ func (l *loader) relation(t term, s method.Setting) (string, bool) {
 	return l.oneOf(t.items[0], "a relation for "+s.Name, s.Relation, s.Planned)
 }
 
-// measured reads a quantity whose error belongs to it.
+// measured reads a quantity whose error belongs to it. One that must be given
+// must have its error, for a mass or a dispersion without one would pass for
+// perfectly known; one that may be left out (a parameter of a published model)
+// may also be quoted without.
 func (l *loader) measured(t term, s method.Setting, v *method.Value) (ok bool) {
 	m := measure{s.Unit, s.Length}
 	if t.kind == referenceTerm && t.path[0] == "nuisance" {
@@ -107,8 +108,8 @@ func (l *loader) measured(t term, s method.Setting, v *method.Value) (ok bool) {
 	if v.Prior, v.Unit, ok = l.prior(t, m, s.Name); !ok {
 		return false
 	}
-	if v.Prior.IsExact() {
-		l.add(problem{at: t.at, what: fmt.Sprintf("%s needs its error", s.Name), write: "Write it like " + m.measuredExample() + ", or with two errors like \"6.1 +0.9 -0.8 …\"."})
+	if s.Required && v.Prior.IsExact() {
+		l.add(problem{at: t.at, what: fmt.Sprintf("%s needs its error", s.Name), write: "Write it like " + m.measuredExample() + "; two errors are written +0.9 -0.8."})
 		return false
 	}
 	return l.permitted(t, s, *v)
@@ -116,10 +117,10 @@ func (l *loader) measured(t term, s method.Setting, v *method.Value) (ok bool) {
 
 // measuredExample is example with an error.
 func (m measure) measuredExample() string {
-	text := strings.Trim(m.example(), `"`)
-	number, unit, _ := strings.Cut(text, " ")
-	x, _ := strconv.ParseFloat(number, 64)
-	return fmt.Sprintf("%q", strings.TrimSpace(fmt.Sprintf("%s +- %g %s", number, x/10, unit)))
+	if text, ok := measuredExamples[standard(units.MustParse(m.unit))]; ok {
+		return strconv.Quote(text)
+	}
+	return strconv.Quote(strings.TrimSpace("0.30 +- 0.02 " + m.unit))
 }
 
 // permitted checks the range of a value, of a prior its median.
@@ -146,14 +147,15 @@ func (l *loader) permitted(t term, s method.Setting, v method.Value) bool {
 	limits := fmt.Sprintf("It lies between %s and %s%s", short(s.Low), short(s.High), unit)
 	switch {
 	case v.Unit != s.Unit:
-		limits, unit = "It is not negative", " "+v.Unit
+		l.add(problem{at: t.at, what: what, why: "It is not negative."})
+		return false
 	case math.IsInf(s.High, 1):
 		limits = fmt.Sprintf("It is at least %s%s", short(s.Low), unit)
 	case math.IsInf(s.Low, -1):
 		limits = fmt.Sprintf("It is at most %s%s", short(s.High), unit)
 	}
 	of := "the value"
-	if !v.Prior.IsExact() {
+	if !v.Prior.IsExact() && s.Kind != method.Measured {
 		of = "the median of the prior"
 	}
 	l.add(problem{at: t.at, what: what, why: fmt.Sprintf("%s; %s here is %s%s.", limits, of, short(x), unit)})
@@ -165,7 +167,7 @@ func short(x float64) string { return strconv.FormatFloat(x, 'g', 6, 64) }
 
 func (l *loader) integer(t term, s method.Setting, v *method.Value) bool {
 	if t.kind != numberTerm || !t.number.IsInt() || !t.number.Num().IsInt64() {
-		l.add(problem{at: t.at, what: fmt.Sprintf("%s is a whole number", s.Name), write: fmt.Sprintf("Write it like %s = 10, without quotes.", s.Name)})
+		l.add(problem{at: t.at, what: fmt.Sprintf("%s is a whole number", s.Name), write: "Write it like " + sample(s) + ", without quotes."})
 		return false
 	}
 	if n := t.number.Num().Int64(); n > 1<<53 || n < -1<<53 {
@@ -295,76 +297,4 @@ func (l *loader) plainText(t term, name string) (string, bool) {
 		return "", false
 	}
 	return t.text, true
-}
-
-// overdensity reads 500, overdensity(500), overdensity(200, "mean") or
-// overdensity("virial").
-func (l *loader) overdensity(t term, s method.Setting, v *method.Value) bool {
-	if t.kind != callTerm {
-		t = term{kind: callTerm, at: t.at, name: "overdensity", items: []term{t}}
-	}
-	if !t.is("overdensity") {
-		l.notAnOverdensity(t, s.Name)
-		return false
-	}
-	delta, of, ok := l.overdensityCall(t)
-	v.Prior, v.Text = prior.Exact(delta), of
-	return ok
-}
-
-func (l *loader) notAnOverdensity(t term, name string) {
-	l.add(problem{at: t.at, what: fmt.Sprintf("%s is an overdensity, not %s", name, t.describe()), write: "Write 500, overdensity(200, \"mean\") or overdensity(\"virial\")."})
-}
-
-// overdensityCall reads the arguments of overdensity(…); delta is 0 for the
-// virial one.
-func (l *loader) overdensityCall(t term) (delta float64, of string, ok bool) {
-	if !l.count(t, []string{"delta", "\"mean\""}, 1) {
-		return 0, "", false
-	}
-	first := t.items[0]
-	if first.kind == textTerm && first.text == "virial" {
-		if len(t.items) > 1 {
-			l.add(problem{at: t.items[1].at, what: "the virial overdensity takes nothing beside it", write: "Write overdensity(\"virial\")."})
-			return 0, "", false
-		}
-		return 0, "virial", l.virialAllowed(t.at)
-	}
-	if first.kind == badTerm {
-		return 0, "", false
-	}
-	if first.kind != numberTerm {
-		l.add(problem{at: first.at, what: fmt.Sprintf("an overdensity is a number, not %s", first.describe()), write: "Write 500, overdensity(200, \"mean\") or overdensity(\"virial\")."})
-		return 0, "", false
-	}
-	delta = float(first.number)
-	if !(delta >= 1 && delta <= 1e6) {
-		l.add(problem{at: first.at, what: "an overdensity lies between 1 and 1e6", why: "It is the mean density inside the radius over the critical density, or over the mean matter density."})
-		return 0, "", false
-	}
-	if len(t.items) == 1 {
-		return delta, "critical", true
-	}
-	of, ok = l.oneOf(t.items[1], "a density to measure by", []string{"critical", "mean"}, nil)
-	return delta, of, ok
-}
-
-// virialAllowed checks that the background is one for which the virial
-// overdensity is known.
-func (l *loader) virialAllowed(at hcl.Range) bool {
-	c := l.background
-	if c == nil { // unreadable: reported where it stands
-		return true
-	}
-	tolerance := 1e-12
-	if c.CMBTemperature > 0 {
-		tolerance = 1e-3 // the density of radiation, which is not computed here
-	}
-	flat := c.Flat || math.Abs(1-c.OmegaMatter-c.OmegaLambda) < tolerance
-	if !flat || c.W0 != -1 || c.Wa != 0 {
-		l.add(problem{at: at, what: "the virial overdensity is not known in this cosmology",
-			why: "The formula of Bryan & Norman (1998) holds in a flat background with a cosmological constant only.", write: "Write the overdensity as a number."})
-		return false
-	}
-	return true
 }

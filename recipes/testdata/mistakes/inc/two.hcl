@@ -1,0 +1,1 @@
+nuisance "x" { prior = normal(0, 2) }

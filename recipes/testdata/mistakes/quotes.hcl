@@ -1,0 +1,7 @@
+object "Curlew" {
+  redshift = 0.212
+}
+cosmology {
+  hubble_constant = "70 km/s/Mpc
+  omega_matter    = 0.3
+}
