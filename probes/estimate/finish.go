@@ -162,7 +162,7 @@ func (t *Task) restate(d *infer.Draws, shifted bool) error {
 func (t *Task) quality(d *infer.Draws, f Fit) {
 	d.Quality.Chi2, d.Quality.Dof, d.Quality.PValue = f.Chi2, f.Dof, 1
 	if f.Dof > 0 {
-		d.Quality.PValue = infer.ChiSquareSurvival(f.Chi2, f.Dof)
+		d.Quality.PValue = infer.ChiSquareP(f.Chi2, f.Dof)
 		if d.Quality.PValue < 1e-3 {
 			d.Warnings = append(d.Warnings, fmt.Sprintf("poorly fitted: χ² = %.1f for %d degrees of freedom (p = %.1g); its error does not cover what the model misses", f.Chi2, f.Dof, d.Quality.PValue))
 		}

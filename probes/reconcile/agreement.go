@@ -86,7 +86,7 @@ func chiSquare(m *Matched, members []int) (float64, error) {
 const (
 	recombined = 4  // times the residuals of the estimates are paired anew
 	averaged   = 48 // values of the shared nuisances over which a density is averaged
-	nodes      = 48 // of the integral over the common ln M
+	nodes      = 24 // of the integral over the common ln M
 	reliable   = 30 // draws beyond zero below which a tail is fitted
 )
 
@@ -158,12 +158,12 @@ func spread(common [][]float64, count int) [][]float64 {
 	return out
 }
 
-// logDensity is the logarithm of one estimate's density of ln M, tabulated, with
-// normal tails.
+// logDensity is the logarithm of one estimate's density of ln M, tabulated
+// between its tails.
 type logDensity struct {
 	grid
-	lower, upper tail
-	mean, sd     float64
+	whole    *density
+	mean, sd float64
 }
 
 func newLogDensity(x []float64) logDensity {
@@ -173,15 +173,12 @@ func newLogDensity(x []float64) logDensity {
 	for at := table.from; at < d.upper.x+table.step; at += table.step {
 		table.values = append(table.values, math.Log(max(d.at(at), 1e-300)))
 	}
-	return logDensity{table, d.lower, d.upper, mean, sd}
+	return logDensity{table, d, mean, sd}
 }
 
 func (l *logDensity) log(x float64) float64 {
-	switch {
-	case x < l.lower.x:
-		return l.lower.logDensity(l.lower.x - x)
-	case x > l.upper.x:
-		return l.upper.logDensity(x - l.upper.x)
+	if x < l.whole.lower.x || x > l.whole.upper.x {
+		return l.whole.log(x)
 	}
 	return l.at(x)
 }
@@ -217,7 +214,7 @@ func (c *contrastDensity) log(x []float64) float64 {
 		}
 		center, width := sum/weight, 1/math.Sqrt(weight)
 		for i := range nodes {
-			u := center + width*(float64(i)/(nodes-1)-0.5)*12
+			u := center + width*(float64(i)/(nodes-1)-0.5)*10
 			log := math.Log(width)
 			for k := range c.logs {
 				log += c.logs[k].log(x[k] - shift[k] - u)
@@ -249,16 +246,16 @@ func shareBelow(values []float64, level float64, dof int) (p float64, fitted boo
 	edge := 2 * (top - values[reliable-1])
 	target := float64(reliable) / float64(len(values))
 	lo, hi := 0.0, 1.0
-	for infer.ChiSquareSurvival(hi*edge, dof) > target {
+	for infer.ChiSquareP(hi*edge, dof) > target {
 		hi *= 2
 	}
 	for range 60 {
 		mid := (lo + hi) / 2
-		if infer.ChiSquareSurvival(mid*edge, dof) > target {
+		if infer.ChiSquareP(mid*edge, dof) > target {
 			lo = mid
 		} else {
 			hi = mid
 		}
 	}
-	return max(infer.ChiSquareSurvival(hi*2*(top-level), dof), 1e-300), true
+	return max(infer.ChiSquareP(hi*2*(top-level), dof), 1e-300), true
 }

@@ -7,17 +7,13 @@ import (
 	"sort"
 
 	"gonum.org/v1/gonum/dsp/fourier"
-	"gonum.org/v1/gonum/mathext"
 )
 
 const (
 	cells = 4096 // of the grid on which densities are convolved
 	// kernel is the width of the smoothing kernel in standard deviations of the
 	// sum; its variance is taken out of the draws beforehand.
-	kernel = 0.1
-	// resolved is the relative Monte Carlo error of a tail probability beyond
-	// which a fitted tail takes over: 0.5 in p is about 0.12σ at 4σ.
-	resolved = 0.5
+	kernel = 0.05
 )
 
 // grid is a function on evenly spaced points.
@@ -51,15 +47,19 @@ func (g grid) cumulate() grid {
 	return c
 }
 
-// histogram holds draws shared linearly between neighbouring points of a grid
-// that starts at the smallest of them.
-type histogram struct {
-	grid // values add up to one
-	n    int
+// mirror is the function of −x.
+func (g grid) mirror() grid {
+	m := grid{-g.x(len(g.values) - 1), g.step, slices.Clone(g.values)}
+	slices.Reverse(m.values)
+	return m
 }
 
+// histogram holds draws shared linearly between neighbouring points of a grid
+// that starts at the smallest of them.
+type histogram struct{ grid } // values add up to one
+
 func newHistogram(x []float64, step float64) histogram {
-	h := histogram{grid{from: slices.Min(x), step: step}, len(x)}
+	h := histogram{grid{from: slices.Min(x), step: step}}
 	h.values = make([]float64, int((slices.Max(x)-h.from)/step)+2)
 	for _, v := range x {
 		u := (v - h.from) / step
@@ -101,8 +101,8 @@ func sumDensity(parts []histogram, step, width float64) grid {
 }
 
 // density is the probability density of a sum of independent quantities, each
-// known by its draws. n draws of each resolve what n² pairs would; beyond, two
-// normal tails continue it.
+// known by its draws. n draws of each resolve what n² pairs would; smooth tails
+// carry it beyond.
 type density struct {
 	grid
 	lower, upper tail
@@ -116,10 +116,15 @@ type density struct {
 // At least one part must vary.
 func convolve(parts ...[]float64) *density {
 	parts = slices.DeleteFunc(parts, func(p []float64) bool { return p == nil })
-	variance := 0.0
-	for _, p := range parts {
+	variance, shares, n := 0.0, make([]float64, len(parts)), len(parts[0])
+	for k, p := range parts {
 		_, sd := meanSD(p)
+		shares[k] = sd * sd
 		variance += sd * sd
+		n = min(n, len(p))
+	}
+	for k := range shares {
+		shares[k] /= variance
 	}
 	width := kernel * math.Sqrt(variance)
 	span := 16 * width
@@ -130,16 +135,13 @@ func convolve(parts ...[]float64) *density {
 	}
 	// Two spare points a part: a histogram is up to two longer than its range.
 	step := span / float64(cells-2*len(parts)-2)
-	d := &density{}
-	histograms := histogramsOf(shrunk, step)
-	d.grid = sumDensity(histograms, step, width)
-	d.lower = lowerTail(histograms, step, width)
-	for k := range shrunk {
-		for i := range shrunk[k] {
-			shrunk[k][i] = -shrunk[k][i]
-		}
+	histograms := make([]histogram, len(shrunk))
+	for k, p := range shrunk {
+		histograms[k] = newHistogram(p, step)
 	}
-	d.upper = lowerTail(histogramsOf(shrunk, step), step, width)
+	d := &density{grid: sumDensity(histograms, step, width)}
+	d.lower = lowerTail(d.cumulate(), shares, n)
+	d.upper = lowerTail(d.mirror().cumulate(), shares, n)
 	d.upper.x = -d.upper.x
 	d.rank()
 	return d
@@ -154,62 +156,6 @@ func shrink(x []float64) []float64 {
 		out[i] = mean + math.Sqrt(1-kernel*kernel)*(v-mean)
 	}
 	return out
-}
-
-func histogramsOf(parts [][]float64, step float64) []histogram {
-	out := make([]histogram, len(parts))
-	for k, p := range parts {
-		out[k] = newHistogram(p, step)
-	}
-	return out
-}
-
-// tail continues a density beyond x outwards as a normal one: at a distance u
-// beyond x it is −z + slope·u standard deviations out (z is negative).
-type tail struct{ x, z, slope float64 }
-
-// lowerTail finds how far down the draws resolve the distribution of their sum,
-// and the normal tail that continues it with the slope it has over the last
-// standard deviation.
-func lowerTail(parts []histogram, step, width float64) tail {
-	cumulative := sumDensity(parts, step, width).cumulate()
-	others := make([]grid, len(parts))
-	for k := range parts {
-		rest := append(slices.Clone(parts[:k]), parts[k+1:]...)
-		others[k] = sumDensity(rest, step, width).cumulate()
-	}
-	// The relative error falls inwards, so the last resolved point is found by
-	// bisection; the tenth percentile is always taken as resolved.
-	last := sort.Search(cells, func(i int) bool { return cumulative.values[i] >= 0.1 })
-	first := sort.Search(last, func(i int) bool {
-		p := cumulative.values[i]
-		return p > 1e-13 && relativeError(parts, others, cumulative.x(i), p) < resolved
-	})
-	z := mathext.NormalQuantile(cumulative.values[first])
-	inner := first + 1
-	for inner < cells-1 && mathext.NormalQuantile(min(cumulative.values[inner], 1)) < z+1 {
-		inner++
-	}
-	rise := mathext.NormalQuantile(min(cumulative.values[inner], 1-1e-12)) - z
-	return tail{cumulative.x(first), z, rise / (step * float64(inner-first))}
-}
-
-// relativeError is the Monte Carlo error of p, the probability of a sum below
-// x, in units of p: each part's draws scatter it by the scatter, among them, of
-// the probability that the other parts make up the rest.
-func relativeError(parts []histogram, others []grid, x, p float64) float64 {
-	sum := 0.0
-	for k, h := range parts {
-		square := 0.0
-		for i, w := range h.values {
-			if w > 0 {
-				s := others[k].at(x - h.x(i))
-				square += w * s * s
-			}
-		}
-		sum += max(square/(p*p)-1, 0) / float64(h.n)
-	}
-	return math.Sqrt(sum)
 }
 
 // rank orders the points between the tails by density.
@@ -228,33 +174,23 @@ func (d *density) rank() {
 	}
 }
 
-// logDensity is the logarithm of the tail's density at a distance u beyond its
-// start.
-func (t tail) logDensity(u float64) float64 {
-	z := -t.z + t.slope*u
-	return -z*z/2 + math.Log(t.slope) - math.Log(2*math.Pi)/2
-}
-
-// lessLikely is the probability of the part of the tail whose density is below
-// exp(level).
-func (t tail) lessLikely(level float64) float64 {
-	z2 := -2 * (level - math.Log(t.slope) + math.Log(2*math.Pi)/2)
-	return normalBelow(-max(math.Sqrt(max(z2, 0)), -t.z))
+// log is the logarithm of the density at x.
+func (d *density) log(x float64) float64 {
+	switch {
+	case x < d.lower.x:
+		return d.lower.logDensity(d.lower.x - x)
+	case x > d.upper.x:
+		return d.upper.logDensity(x - d.upper.x)
+	}
+	return math.Log(d.at(x))
 }
 
 // LessLikely is the probability of values less likely than x, and whether a
 // fitted tail was used to tell (Raveri & Doux 2021, their eq. for the
 // probability mass outside the isodensity contour through x).
 func (d *density) LessLikely(x float64) (p float64, fitted bool) {
-	var level float64
-	switch {
-	case x < d.lower.x:
-		level, fitted = d.lower.logDensity(d.lower.x-x), true
-	case x > d.upper.x:
-		level, fitted = d.upper.logDensity(x-d.upper.x), true
-	default:
-		level = math.Log(d.at(x))
-	}
+	level := d.log(x)
+	fitted = d.lower.x-x > d.lower.resolved || x-d.upper.x > d.upper.resolved
 	p = d.lower.lessLikely(level) + d.upper.lessLikely(level)
 	rho := math.Exp(level)
 	if k := sort.SearchFloat64s(d.order, rho); k > 0 {

@@ -223,7 +223,7 @@ func read(d *infer.Draws, radius, threshold float64) ([]float64, Mark) {
 	return ln, Mark{Radius: radius, Extrapolated: extrapolated(d.Covers, radius)}
 }
 
-// commonPart is the cubic regression of ln M on the joint scores of the shared
+// commonPart is the polynomial regression of ln M on the joint scores of the shared
 // nuisances that the estimate names.
 func commonPart(ln []float64, joint *Joint, e Estimate) ([]float64, error) {
 	var named []int
@@ -244,7 +244,7 @@ func commonPart(ln []float64, joint *Joint, e Estimate) ([]float64, error) {
 			rows[i][c] = joint.Scores[i][j]
 		}
 	}
-	basis := newCubic(rows)
+	basis := newPolynomial(rows)
 	fit, err := basis.fit(rows, ln, 1)
 	if err != nil {
 		return nil, err

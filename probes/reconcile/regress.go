@@ -36,24 +36,30 @@ func moments(rows [][]float64) ([]float64, *mat.SymDense) {
 	return mean, cov
 }
 
-// cubic is the basis of all monomials up to third degree in d standardised
-// variables.
-type cubic struct {
+// polynomial is the basis of all monomials in d standardised variables, up to
+// fifth degree for one or two variables and third beyond. A cubic in one
+// variable would miss 3% of the spread that a uniform non-thermal fraction gives
+// to ln M.
+type polynomial struct {
 	mean, sd []float64
 	powers   [][]int // one row a monomial: the power of each variable
 }
 
-func newCubic(rows [][]float64) cubic {
+func newPolynomial(rows [][]float64) polynomial {
 	mean, cov := moments(rows)
-	c := cubic{mean: mean, sd: make([]float64, len(mean))}
+	c := polynomial{mean: mean, sd: make([]float64, len(mean))}
 	for j := range c.sd {
 		c.sd[j] = math.Sqrt(cov.At(j, j))
 	}
-	c.enumerate(make([]int, len(mean)), 0, 3)
+	degree := 5
+	if len(mean) > 2 {
+		degree = 3
+	}
+	c.enumerate(make([]int, len(mean)), 0, degree)
 	return c
 }
 
-func (c *cubic) enumerate(power []int, from, left int) {
+func (c *polynomial) enumerate(power []int, from, left int) {
 	if from == len(power) {
 		c.powers = append(c.powers, append([]int(nil), power...))
 		return
@@ -65,7 +71,7 @@ func (c *cubic) enumerate(power []int, from, left int) {
 	power[from] = 0
 }
 
-func (c *cubic) terms(x, out []float64) {
+func (c *polynomial) terms(x, out []float64) {
 	for t, power := range c.powers {
 		v := 1.0
 		for j, k := range power {
@@ -78,15 +84,15 @@ func (c *cubic) terms(x, out []float64) {
 	}
 }
 
-// regression is a fitted cubic of several responses at once.
+// regression is a fitted polynomial of several responses at once.
 type regression struct {
-	basis *cubic
+	basis *polynomial
 	coef  *mat.Dense // terms × responses
 	term  []float64  // scratch
 }
 
 // fit regresses y (len(rows) × width, row-major) on rows by least squares.
-func (c *cubic) fit(rows [][]float64, y []float64, width int) (*regression, error) {
+func (c *polynomial) fit(rows [][]float64, y []float64, width int) (*regression, error) {
 	terms := len(c.powers)
 	normal, right := mat.NewSymDense(terms, nil), mat.NewDense(terms, width, nil)
 	term := make([]float64, terms)

@@ -30,7 +30,7 @@ type Joint struct {
 //	Λ = Σ_k V_k⁻¹ − diag(n_j − 1),   Λ s̄ = Σ_k V_k⁻¹ m_k .
 //
 // Scores s* are drawn from it, and each stored draw is carried along by the
-// cubic regression f of its ln M(r) on s: ln M(r) += f_r(s*) − f_r(s). Exact
+// polynomial regression f of its ln M(r) on s: ln M(r) += f_r(s*) − f_r(s). Exact
 // when all is Gaussian; where a posterior is skew in s, or moves by more than
 // two of its standard deviations, a warning says that it is not.
 func Transport(estimates []Estimate, stream infer.Stream) (*Joint, error) {
@@ -253,7 +253,7 @@ func carry(d *infer.Draws, p scorePosterior, joint [][]float64) (*infer.Draws, e
 	moved := *d
 	moved.LnMass = make([]float64, len(d.LnMass))
 	width := len(d.Radii)
-	basis := newCubic(p.scores)
+	basis := newPolynomial(p.scores)
 	target := make([][]float64, d.N)
 	for i := range target {
 		target[i] = make([]float64, len(p.names))
