@@ -150,8 +150,9 @@ func (t Truth) lens() *lens {
 		integrand := surface * r * r
 		if i == 0 {
 			inside = integrand / 2 // a flat core inside 1 pc
-		} else {
-			inside += (integrand + last) / 2 * step
+		} else { // Simpson's rule
+			between := r * math.Exp(-step/2)
+			inside += (integrand + 4*path.surfaceDensity(h, between)*between*between + last) / 6 * step
 		}
 		last = integrand
 		l.lnRadii = append(l.lnRadii, lnR)
