@@ -73,11 +73,11 @@ var duffy2008 = Relation{
 //	log10 c = a + b log10(M/1e12 h⁻¹ Msun)
 //	a = 0.520 + 0.385 exp(−0.617 z^1.21),   b = −0.101 + 0.026 z
 //
-// (Dutton & Macciò 2014, eqs. 7, 10 and 11, NFW, 200 times critical), with a
+// (Dutton & Macciò 2014, NFW, 200 times critical), with a
 // scatter of 0.11 in log10 c. Coefficients, scatter and limits from memory.
 var duttonMaccio2014 = Relation{
 	Name:    "dutton-maccio-2014",
-	Source:  "Dutton & Macciò 2014, MNRAS 441, 3359, eqs. 7, 10, 11",
+	Source:  "Dutton & Macciò 2014, MNRAS 441, 3359 (NFW, 200c)",
 	Scatter: dex(0.11),
 	Low:     1e10 / 0.671, High: 1e15 / 0.671, MaxRedshift: 5,
 	median: func(m200, z float64, c *cosmology.Cosmology) float64 {

@@ -54,7 +54,7 @@ var hernquistSeries = func() (h [12]float64) {
 //
 //	Σ = M/(2πa²(1−s²)²) · [(2+s²) A(s) − 3],   s = R/a
 //
-// (Hernquist 1990, eqs. 32 to 34).
+// (Hernquist 1990).
 func (h Hernquist) SurfaceDensity(R float64) float64 {
 	s := R / h.Scale
 	scale := h.Total / (2 * math.Pi * h.Scale * h.Scale)

@@ -2,7 +2,8 @@ package halo
 
 import "gonum.org/v1/gonum/integrate/quad"
 
-const nodes = 16
+// nodes reaches 1e-16 on unit intervals of functions analytic within π/2 of them.
+const nodes = 10
 
 // legendre holds the rule of Gauss and Legendre on (0, 1).
 var legendre = func() (rule struct{ x, w [nodes]float64 }) {
