@@ -36,7 +36,7 @@ func TestRefusals(t *testing.T) {
 		{"w forgotten", Params{70, 0.3, 0.7, 0, 0, 0}, "w0 + wa"},
 		{"dark energy that outweighed matter", Params{70, 0.3, 0.7, -0.5, 0.8, 0}, "w0 + wa"},
 		// For Ω_m = 0.3 the limit is Ω_Λ = 4Ω_m cosh³(arccosh(1/Ω_m − 1)/3) =
-		// 1.7136… (Carroll, Press & Turner 1992, eq. 13).
+		// 1.7135 (Carroll, Press & Turner 1992).
 		{"bounce", Params{70, 0.3, 1.8, -1, 0, 0}, "no big bang"},
 		{"bounce, just", Params{70, 0.3, bounce(0.3) + 1e-3, -1, 0, 0}, "no big bang"},
 		{"loitering", Params{70, 0.3, bounce(0.3) - 1e-9, -1, 0, 0}, "omega_lambda"},

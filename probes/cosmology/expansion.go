@@ -18,7 +18,7 @@ const neutrinoSpecies = 3.046
 //
 //	Ω_γ = 4 σ_SB T⁴/(c³ ρ_crit),   Ω_ν = (7/8) (4/11)^(4/3) N_eff Ω_γ = 0.2271 N_eff Ω_γ,
 //
-// with N_eff = 3.046 (Komatsu et al. 2011, section 3.3). Zero without a CMB temperature.
+// with N_eff = 3.046 (Komatsu et al. 2011). Zero without a CMB temperature.
 func (p Params) OmegaRadiation() float64 {
 	hubble := p.HubbleConstant / constants.SecondsPerHubble // 1/s
 	critical := 3 * hubble * hubble / (8 * math.Pi * constants.NewtonSI)
@@ -80,7 +80,7 @@ func (c *Cosmology) OmegaMatter(z float64) float64 {
 //
 //	Δ_vir = 18π² + 82 x − 39 x²,   x = Ω_m(z) − 1
 //
-// (Bryan & Norman 1998, eq. 6, fitted for Ω_m(z) of 0.1 to 1). It is an error
+// (Bryan & Norman 1998, fitted for Ω_m(z) of 0.1 to 1; coefficients from memory). It is an error
 // outside flat ΛCDM, for which alone the formula holds.
 func (c *Cosmology) VirialOverdensity(z float64) (float64, error) {
 	if c.curvature != 0 || (c.p.OmegaLambda != 0 && !c.constant) {
