@@ -58,6 +58,9 @@ func (u Unit) String() string { return u.text }
 // SameDimension reports whether quantities of the two units can be compared.
 func SameDimension(a, b Unit) bool { return a.dim == b.dim }
 
+// Equal reports whether two units are the same, however they are spelt.
+func Equal(a, b Unit) bool { return a.dim == b.dim && a.size().Cmp(b.size()) == 0 }
+
 // IsLength reports whether the unit is one of length.
 func (u Unit) IsLength() bool { return u.dim == Dimension{length: 1} }
 

@@ -181,6 +181,9 @@ func TestDimensions(t *testing.T) {
 	if !SameDimension(MustParse("solLum"), MustParse("erg/s")) || SameDimension(MustParse("count"), MustParse("photon")) {
 		t.Error("solLum is erg/s, a count is not a photon")
 	}
+	if !Equal(MustParse("km s-1"), MustParse("km/s")) || !Equal(MustParse("km/s"), MustParse("pm/fs")) || Equal(MustParse("kpc"), MustParse("Mpc")) || Equal(MustParse("rad"), MustParse("")) {
+		t.Error("Equal compares size and dimension, not spelling")
+	}
 	var zero Unit
 	if !zero.IsPure() || zero.String() != "" {
 		t.Error("the zero Unit is the pure number")
