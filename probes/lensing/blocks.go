@@ -40,7 +40,8 @@ var blocks = []method.Block{
 			},
 			sourceRedshift,
 		},
-		Blocks: []method.Block{sourcesBlock},
+		Blocks:       []method.Block{sourcesBlock},
+		Alternatives: [][][]string{{{"redshift"}, {"source_redshift"}, {"sources"}}},
 	},
 	{
 		Name: "bins",
@@ -51,6 +52,7 @@ var blocks = []method.Block{
 			{Name: "count", Kind: method.Integer, Low: 3, High: 1000, Doc: "number of bins"},
 			{Name: "edges", Kind: method.List, Unit: "kpc", Length: true, Doc: "all edges in rising order, instead of `from`, `to` and `count`"},
 		},
+		Alternatives: [][][]string{{{"from", "to", "count"}, {"edges"}}},
 	},
 	{
 		Name: "profile",
@@ -70,18 +72,21 @@ var blocks = []method.Block{
 		Alternatives: [][][]string{
 			{{"radius"}, {"inner", "outer"}},
 			{{"error"}, {"minus", "plus"}, {"low", "high"}},
+			{{"source_redshift"}, {"sources"}},
 		},
 		Settings: []method.Setting{sourceRedshift},
 		Blocks: []method.Block{
 			sourcesBlock,
 			{
 				Name: "covariance",
-				Doc:  "The covariance of the tangential shears, one row a pair of bins; it takes the place of their errors. A pair may be given once or both ways, and is zero when left out.",
+				Doc: "The covariance of the tangential shears, which takes the place of their errors: one row a pair of bins, or, with no column named, a square matrix with one row and one column a bin. " +
+					"In the first form a pair may be given once or both ways, and is zero when left out.",
 				Columns: []method.Column{
-					{Name: "first", Required: true, Doc: "number of one bin, counted from 1 in the order of the profile"},
-					{Name: "second", Required: true, Doc: "number of the other"},
-					{Name: "value", Required: true, Doc: "their covariance"},
+					{Name: "first", Doc: "number of one bin, counted from 1 in the order of the profile"},
+					{Name: "second", Doc: "number of the other"},
+					{Name: "value", Doc: "their covariance"},
 				},
+				Alternatives: [][][]string{{{"first", "second", "value"}, {}}},
 			},
 		},
 	},

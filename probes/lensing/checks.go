@@ -108,7 +108,7 @@ func (p *Profile) checks(expected []float64) (checks []infer.Check, warnings []s
 	add(infer.Check{
 		Name: "strong shear", Statistic: float64(beyond), PValue: -1, Passed: beyond == 0,
 		Note: fmt.Sprintf("bins where the best fit has g above %g", strong),
-	}, fmt.Sprintf("the best fit has a reduced shear above %g in %d of %d bins, where the mean over sources is too low by several per cent; the bins were kept, fit_within leaves them out", strong, beyond, len(expected)))
+	}, fmt.Sprintf("the best fit has a reduced shear above %g in %d of %d bins: there the mean over the sources' redshifts errs by several per cent; the bins were kept, and fit_within leaves them out", strong, beyond, len(expected)))
 	return checks, warnings
 }
 

@@ -4,8 +4,6 @@ import (
 	"fmt"
 	"math"
 
-	"gonum.org/v1/gonum/mat"
-
 	"steelyard/probes/catalogue"
 	"steelyard/probes/estimate"
 )
@@ -102,38 +100,6 @@ func readErrors(table *catalogue.Table, bins []Bin) error {
 		if !(b.Minus > 0 && b.Plus > 0) {
 			return fmt.Errorf("%s: row %d: the errors −%g +%g about %g must both be above zero", table.File, table.Rows[i], b.Minus, b.Plus, b.Shear)
 		}
-	}
-	return nil
-}
-
-// readCovariance reads the covariance of the bins, one row a pair, and puts the
-// errors that it implies in the place of the profile's.
-func readCovariance(table *catalogue.Table, p *Profile) error {
-	n := len(p.Bins)
-	first, second, value := table.Values("first"), table.Values("second"), table.Values("value")
-	c, given := make([]float64, n*n), make([]bool, n*n)
-	for k := range value {
-		i, j := int(first[k])-1, int(second[k])-1
-		if float64(i+1) != first[k] || float64(j+1) != second[k] || i < 0 || j < 0 || i >= n || j >= n {
-			return fmt.Errorf("%s: row %d: bins %g and %g, where the profile has bins 1 to %d", table.File, table.Rows[k], first[k], second[k], n)
-		}
-		if given[i*n+j] && c[i*n+j] != value[k] {
-			return fmt.Errorf("%s: row %d: bins %d and %d have another covariance in an earlier row", table.File, table.Rows[k], i+1, j+1)
-		}
-		c[i*n+j], c[j*n+i] = value[k], value[k]
-		given[i*n+j], given[j*n+i] = true, true
-	}
-	var eigen mat.EigenSym
-	if !eigen.Factorize(mat.NewSymDense(n, c), false) {
-		return fmt.Errorf("%s: the covariance has no eigenvalues", table.File)
-	}
-	if lowest := eigen.Values(nil)[0]; !(lowest > 0) {
-		return fmt.Errorf("%s: the covariance is not positive definite: its lowest eigenvalue is %.4g", table.File, lowest)
-	}
-	p.Covariance = c
-	for i := range p.Bins {
-		sigma := math.Sqrt(c[i*n+i])
-		p.Bins[i].Minus, p.Bins[i].Plus = sigma, sigma
 	}
 	return nil
 }

@@ -3,6 +3,7 @@ package lensing
 import (
 	"context"
 	"math"
+	"slices"
 	"testing"
 
 	"steelyard/probes/catalogue"
@@ -70,6 +71,23 @@ func TestReadCovariance(t *testing.T) {
 		column("value", "", 4e-4, 4e-4, 4e-4, 9e-4, 4e-4, 1e-4, 1e-4))
 	p := reduced(t, task)
 	near(t, "error of bin 4", p.Bins[3].Plus, 0.03, 1e-14)
+	// The same as a matrix.
+	var columns []catalogue.Column
+	for j := range 5 {
+		columns = append(columns, column(string(rune('a'+j)), "", p.Covariance[5*j:5*j+5]...))
+	}
+	task.Tables["profile.covariance"] = table("matrix.csv", columns...)
+	if q := reduced(t, task); !slices.Equal(p.Covariance, q.Covariance) {
+		t.Errorf("as a matrix %v, by pairs %v", q.Covariance, p.Covariance)
+	}
+	task.Tables["profile.covariance"] = table("matrix.csv", columns[:4]...)
+	_, err := reduce(context.Background(), task)
+	refused(t, "not square", err, "matrix.csv", "5 rows of 4 columns")
+	columns[4].Values = []float64{1, 0, 0, 0, 4e-4}
+	task.Tables["profile.covariance"] = table("matrix.csv", columns...)
+	_, err = reduce(context.Background(), task)
+	refused(t, "not symmetric", err, "matrix.csv: row 5", "the other way round")
+
 	m, err := newMeasure(p)
 	if err != nil {
 		t.Fatal(err)

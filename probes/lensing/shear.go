@@ -48,20 +48,9 @@ func (s signal) predict(m halo.Model, out []float64) {
 		beta, beta2 := s.distance*b.Beta, s.distance*s.distance*b.Beta2
 		sum := 0.0
 		for _, n := range b.Nodes {
-			surface, mean := projected(m, n.Radius)
+			surface, mean := halo.Projected(m, n.Radius)
 			sum += n.Share * ellipticity(reducedShear(scale*(mean-surface), scale*surface, beta, beta2))
 		}
 		out[i] = s.response * sum
 	}
-}
-
-// projected is Σ(R) and its mean inside R, together where the model gives them
-// for the price of one.
-func projected(m halo.Model, R float64) (surface, mean float64) {
-	if both, ok := m.(interface {
-		Projected(R float64) (surface, mean float64)
-	}); ok {
-		return both.Projected(R)
-	}
-	return m.SurfaceDensity(R), m.MeanSurfaceDensity(R)
 }

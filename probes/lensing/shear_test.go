@@ -79,7 +79,7 @@ func TestSinglePlane(t *testing.T) {
 	critical := c.SigmaCritical(ref.Halo.Redshift, math.Inf(1))
 	for _, row := range ref.SinglePlane {
 		b := newEfficiencies(c, ref.Halo.Redshift, 0).exact(row.Zs)
-		surface, mean := projected(nfw, row.R)
+		surface, mean := halo.Projected(nfw, row.R)
 		near(t, "κ", b*surface/critical, row.Kappa, 1e-10)
 		near(t, "γ", b*(mean-surface)/critical, row.Gamma, 1e-10)
 		near(t, "g", reducedShear((mean-surface)/critical, surface/critical, b, b*b), row.G, 1e-10)
