@@ -140,7 +140,7 @@ type Failure struct {
 type Node struct {
 	ID      string  `json:"id"`
 	Kind    string  `json:"kind"`
-	State   string  `json:"state"`
+	State   string  `json:"state,omitempty"`
 	Digest  string  `json:"digest,omitempty"`
 	Seconds float64 `json:"seconds"`
 }
@@ -148,4 +148,15 @@ type Node struct {
 // WriteJSON writes the weighing as one line.
 func (w *Weighing) WriteJSON(out io.Writer) error {
 	return json.NewEncoder(out).Encode(w)
+}
+
+// Record is the weighing as the history keeps it: the JSON without the nodes'
+// states and durations, so that two runs that found the same are the same.
+func (w *Weighing) Record() ([]byte, error) {
+	kept := *w
+	kept.Nodes = make([]Node, len(w.Nodes))
+	for i, n := range w.Nodes {
+		kept.Nodes[i] = Node{ID: n.ID, Kind: n.Kind, Digest: n.Digest}
+	}
+	return json.Marshal(&kept)
 }

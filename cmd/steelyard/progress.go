@@ -1,0 +1,105 @@
+package main
+
+import (
+	"fmt"
+	"io"
+	"os"
+	"strings"
+	"time"
+
+	"golang.org/x/term"
+
+	"steelyard/engine"
+)
+
+// display shows what a run is doing: one line that is written over on a
+// terminal, a line for each node that was computed elsewhere.
+type display struct {
+	out     io.Writer
+	live    bool
+	quiet   bool
+	running []string
+	shown   time.Time
+	counts  map[engine.State]int
+	length  int // of the live line
+}
+
+func (o *options) progress() *display {
+	d := &display{out: o.err, quiet: o.quiet, counts: map[engine.State]int{}}
+	if f, ok := o.err.(*os.File); ok {
+		d.live = term.IsTerminal(int(f.Fd()))
+	}
+	return d
+}
+
+// event takes one event of a run.
+func (d *display) event(e engine.Event) {
+	switch e.Type {
+	case engine.Started:
+		d.running = append(d.running, e.Node)
+	case engine.Finished:
+		d.counts[e.State]++
+		for i, id := range d.running {
+			if id == e.Node {
+				d.running = append(d.running[:i:i], d.running[i+1:]...)
+				break
+			}
+		}
+		if !d.live && !d.quiet && e.State == engine.Computed {
+			fmt.Fprintf(d.out, "computed %s in %.2f s\n", e.Node, e.Seconds)
+		}
+	case engine.Warning:
+		d.clear()
+		fmt.Fprintf(d.out, "steelyard: warning: %s\n", e.Text)
+	}
+	if d.live && !d.quiet && (e.Type == engine.Started || e.Type == engine.Finished || time.Since(d.shown) > 100*time.Millisecond) {
+		d.draw(e)
+	}
+}
+
+func (d *display) draw(e engine.Event) {
+	d.shown = time.Now()
+	line := fmt.Sprintf("%d of %d nodes", e.Finished, e.Total)
+	if e.Left >= 1 {
+		line += fmt.Sprintf(", about %s left", (time.Duration(e.Left) * time.Second).String())
+	}
+	if len(d.running) > 0 {
+		line += ": " + strings.Join(d.running, ", ")
+	}
+	width := 100
+	if f, ok := d.out.(*os.File); ok {
+		if w, _, err := term.GetSize(int(f.Fd())); err == nil && w > 10 {
+			width = w - 1
+		}
+	}
+	if len(line) > width {
+		line = line[:width]
+	}
+	fmt.Fprintf(d.out, "\r%s%s", line, strings.Repeat(" ", max(0, d.length-len(line))))
+	d.length = len(line)
+}
+
+// clear removes the live line.
+func (d *display) clear() {
+	if d.length > 0 {
+		fmt.Fprintf(d.out, "\r%s\r", strings.Repeat(" ", d.length))
+		d.length = 0
+	}
+}
+
+// close ends the display with a count of what became of the nodes.
+func (d *display) close() {
+	d.clear()
+	if d.quiet {
+		return
+	}
+	var parts []string
+	for _, s := range []engine.State{engine.Computed, engine.Reused, engine.Failed, engine.Blocked} {
+		if n := d.counts[s]; n > 0 {
+			parts = append(parts, fmt.Sprintf("%d %s", n, s))
+		}
+	}
+	if len(parts) > 0 {
+		fmt.Fprintf(d.out, "nodes: %s\n", strings.Join(parts, ", "))
+	}
+}
