@@ -10,22 +10,19 @@ import (
 // fewest is the smallest number of bins a profile may have.
 const fewest = 3
 
-// binEdges returns the edges in kpc that a `bins` block asks for. An angle is
-// multiplied by distance, the angular-diameter distance of the lens.
-func binEdges(s method.Settings, distance float64) ([]float64, error) {
+// binEdges returns the edges in kpc that a `bins` block asks for.
+func binEdges(s method.Settings) ([]float64, error) {
 	from, to, count, list := s["from"], s["to"], s["count"], s["edges"]
 	if list.Set {
 		if from.Set || to.Set || count.Set {
 			return nil, fmt.Errorf("bins: give `edges`, or `from`, `to` and `count`, not both")
 		}
-		return checkedEdges(lengths(list.Numbers, list.Unit, distance))
+		return checkedEdges(list.Numbers)
 	}
 	if !from.Set || !to.Set || !count.Set {
 		return nil, fmt.Errorf("bins: `from`, `to` and `count` are needed together, or `edges`")
 	}
-	lo := lengths([]float64{from.Prior.A}, from.Unit, distance)[0]
-	hi := lengths([]float64{to.Prior.A}, to.Unit, distance)[0]
-	n := int(count.Prior.A)
+	lo, hi, n := from.Prior.A, to.Prior.A, int(count.Prior.A)
 	switch {
 	case n < fewest:
 		return nil, fmt.Errorf("bins: count = %d; at least %d bins are needed", n, fewest)
@@ -55,15 +52,4 @@ func checkedEdges(edges []float64) ([]float64, error) {
 		}
 	}
 	return edges, nil
-}
-
-// lengths converts numbers in unit, "kpc" or "rad", to kpc.
-func lengths(numbers []float64, unit string, distance float64) []float64 {
-	out := append([]float64(nil), numbers...)
-	if unit == "rad" {
-		for i := range out {
-			out[i] *= distance
-		}
-	}
-	return out
 }

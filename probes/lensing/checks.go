@@ -121,7 +121,7 @@ func (p *Profile) crossCheck() infer.Check {
 		d := b.Cross / b.Error()
 		chi2 += d * d
 	}
-	pv := infer.ChiSquareSurvival(chi2, n)
+	pv := infer.ChiSquareP(chi2, n)
 	return infer.Check{
 		Name: "cross shear", Statistic: chi2, PValue: pv, Passed: pv >= 0.01,
 		Note: fmt.Sprintf("χ² against zero, %d bins", n),

@@ -70,7 +70,7 @@ func newShapes(t *estimate.Task) (*shapes, error) {
 		s.mirror = -1
 	}
 	var err error
-	if s.edges, err = binEdges(bins, s.distance); err != nil {
+	if s.edges, err = binEdges(bins); err != nil {
 		return nil, err
 	}
 	if s.redshift == nil {

@@ -276,13 +276,11 @@ func TestOddCatalogues(t *testing.T) {
 		t.Errorf("%d bins, warnings %q", len(p.Bins), w)
 	}
 
-	// Right ascension counted from −π, and bins given as angles.
+	// Right ascension counted from −π.
 	shifted := shapeTask(t, curlew, curlew.Shapes(few, rand.New(rand.NewPCG(12, 13))))
 	for i := range shifted.Tables["galaxies"].Values("ra") {
 		shifted.Tables["galaxies"].Values("ra")[i] -= 2 * math.Pi
 	}
-	scale := 1 / shifted.Cosmology.AngularDiameter(curlew.Redshift)
-	shifted.Blocks["bins"] = method.Settings{"from": number(200*scale, "rad"), "to": number(3000*scale, "rad"), "count": number(10, "")}
 	for i, b := range reduced(t, shifted).Bins {
 		near(t, "shear", b.Shear, whole.Bins[i].Shear, 1e-9) // rounding of the angles
 	}
@@ -327,18 +325,18 @@ func TestBinEdges(t *testing.T) {
 		{"edges from zero", method.Settings{"edges": span(0, 1, 2, 3)}, "above zero"},
 		{"unsorted edges", method.Settings{"edges": span(1, 3, 2, 4)}, "edge 3"},
 	} {
-		_, err := binEdges(x.s, 1)
+		_, err := binEdges(x.s)
 		refused(t, x.name, err, x.says)
 	}
-	edges, err := binEdges(logBins(200, 3200, 4), 1)
+	edges, err := binEdges(logBins(200, 3200, 4))
 	if err != nil {
 		t.Fatal(err)
 	}
 	for i, want := range []float64{200, 400, 800, 1600, 3200} {
 		near(t, "edge", edges[i], want, 1e-14)
 	}
-	edges, err = binEdges(method.Settings{"edges": {Set: true, Unit: "rad", Numbers: []float64{1, 2, 3, 5}}}, 100)
-	if err != nil || edges[0] != 100 || edges[3] != 500 {
-		t.Errorf("angles: %v, %v", edges, err)
+	edges, err = binEdges(method.Settings{"edges": span(1, 2, 3, 5)})
+	if err != nil || len(edges) != 4 || edges[3] != 5 {
+		t.Errorf("edges: %v, %v", edges, err)
 	}
 }

@@ -71,7 +71,7 @@ func within(p *Profile, t *estimate.Task) (*Profile, error) {
 	if !v.Set {
 		return p, nil
 	}
-	span := lengths(v.Numbers, v.Unit, t.Cosmology.AngularDiameter(t.Object.Redshift))
+	span := v.Numbers
 	if len(span) != 2 || !(span[0] < span[1]) {
 		return nil, fmt.Errorf("fit_within: the second radius must lie beyond the first")
 	}
