@@ -50,7 +50,7 @@ func openFile(f *os.File, path string, names []string) (source, error) {
 // openContent opens the table in size bytes. If content is an io.Closer the
 // source closes it.
 func openContent(content io.ReadSeeker, size int64, path string, names []string) (source, error) {
-	head := make([]byte, min(size, 4096))
+	head := make([]byte, min(size, headBytes))
 	if _, err := io.ReadFull(content, head); err != nil {
 		return nil, err
 	}
@@ -69,6 +69,9 @@ func openContent(content io.ReadSeeker, size int64, path string, names []string)
 	}
 	return openText(content)
 }
+
+// headBytes is how much of a file is looked at to recognise its format.
+const headBytes = 1 << 14
 
 // foreign lists formats that are known by their first bytes and not read.
 var foreign = []struct{ magic, what string }{
@@ -108,6 +111,9 @@ func recognise(head []byte) (format string, err error) {
 	}
 	if i := bytes.IndexByte(head, 0); i >= 0 {
 		return "", problem("this is neither a FITS file nor text (byte %d is zero)", i+1)
+	}
+	if bytes.Contains(head, []byte("Byte-by-byte Description of file")) {
+		return "", problem("this is a machine-readable table with a byte-by-byte description, which is not read yet; save it as ECSV or CSV")
 	}
 	if bytes.HasPrefix(head, []byte(ecsvMark)) {
 		return "ecsv", nil

@@ -65,9 +65,6 @@ func lay(content io.Reader) (*layout, error) {
 			return nil, err
 		}
 		text := strings.TrimSpace(line)
-		if strings.Contains(text, "Byte-by-byte Description") {
-			return nil, problem("this is a machine-readable table with a byte-by-byte description, which is not read yet; save it as ECSV or CSV")
-		}
 		if !strings.HasPrefix(text, "#") {
 			if text == "" {
 				continue

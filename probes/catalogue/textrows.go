@@ -82,7 +82,7 @@ func (t *textTable) record() (err error) {
 		if err != nil {
 			var parse *csv.ParseError
 			if errors.As(err, &parse) {
-				t.at = t.layout.skip + parse.Line
+				t.at = t.layout.skip + parse.StartLine
 			}
 			return csvProblem(err)
 		}
@@ -150,7 +150,7 @@ func isMissing(cell string) bool {
 }
 
 var (
-	sexagesimal  = regexp.MustCompile(`^[+-]?\d{1,3}([:hd°]|\s)\s*\d{1,2}\b`)
+	sexagesimal  = regexp.MustCompile(`^[+-]?\d{1,3}([:hd°]|\s)\s*\d{1,2}`)
 	decimalComma = regexp.MustCompile(`^[+-]?\d+,\d+([eE][+-]?\d+)?$`)
 	fortran      = regexp.MustCompile(`^[+-]?\d*\.?\d*[dD][+-]?\d+$`)
 )

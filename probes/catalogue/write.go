@@ -1,8 +1,10 @@
 package catalogue
 
 import (
+	"bufio"
 	"encoding/binary"
 	"encoding/csv"
+	"errors"
 	"fmt"
 	"io"
 	"math"
@@ -200,15 +202,9 @@ func write(path string, columns []OutColumn, body func(w io.Writer, rows int) er
 		return err
 	}
 	defer os.Remove(f.Name()) // fails after the rename, as it should
-	if err := body(f, rows); err != nil {
-		f.Close()
-		return err
-	}
-	if err := f.Chmod(0o644); err != nil {
-		f.Close()
-		return err
-	}
-	if err := f.Close(); err != nil {
+	w := bufio.NewWriter(f)
+	err = errors.Join(body(w, rows), w.Flush(), f.Chmod(0o644), f.Close())
+	if err != nil {
 		return err
 	}
 	return os.Rename(f.Name(), path)
@@ -257,12 +253,13 @@ func check(columns []OutColumn) (rows int, err error) {
 	return rows, nil
 }
 
-// plain reports whether the text is printable ASCII without blanks at its ends.
+// plain reports whether the text is printable ASCII without blanks at its ends,
+// and does not begin a comment.
 func plain(text string) bool {
 	for i := range len(text) {
 		if text[i] < ' ' || text[i] > '~' {
 			return false
 		}
 	}
-	return strings.TrimSpace(text) == text
+	return strings.TrimSpace(text) == text && !strings.HasPrefix(text, "#")
 }
