@@ -18,7 +18,7 @@ type display struct {
 	out     io.Writer
 	live    bool
 	quiet   bool
-	running []string
+	running []started
 	shown   time.Time
 	counts  map[engine.State]int
 	length  int // of the live line
@@ -32,15 +32,22 @@ func (o *options) progress() *display {
 	return d
 }
 
+// started is a node that runs now.
+type started struct {
+	id       string
+	at       time.Time
+	expected float64 // seconds, 0 when it was never computed before
+}
+
 // event takes one event of a run.
 func (d *display) event(e engine.Event) {
 	switch e.Type {
 	case engine.Started:
-		d.running = append(d.running, e.Node)
+		d.running = append(d.running, started{e.Node, time.Now(), e.Expected})
 	case engine.Finished:
 		d.counts[e.State]++
-		for i, id := range d.running {
-			if id == e.Node {
+		for i, r := range d.running {
+			if r.id == e.Node {
 				d.running = append(d.running[:i:i], d.running[i+1:]...)
 				break
 			}
@@ -60,11 +67,16 @@ func (d *display) event(e engine.Event) {
 func (d *display) draw(e engine.Event) {
 	d.shown = time.Now()
 	line := fmt.Sprintf("%d of %d nodes", e.Finished, e.Total)
-	if e.Left >= 1 {
-		line += fmt.Sprintf(", about %s left", (time.Duration(e.Left) * time.Second).String())
+	var names []string
+	for _, r := range d.running {
+		name := r.id
+		if left := r.expected - time.Since(r.at).Seconds(); left >= 1 {
+			name += fmt.Sprintf(" (%.0f s left)", left)
+		}
+		names = append(names, name)
 	}
-	if len(d.running) > 0 {
-		line += ": " + strings.Join(d.running, ", ")
+	if len(names) > 0 {
+		line += ": " + strings.Join(names, ", ")
 	}
 	width := 100
 	if f, ok := d.out.(*os.File); ok {

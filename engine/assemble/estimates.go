@@ -11,7 +11,6 @@ import (
 	"steelyard/engine"
 	"steelyard/engine/weighing"
 	"steelyard/probes/catalogue"
-	"steelyard/probes/cosmology"
 	"steelyard/probes/estimate"
 	"steelyard/probes/halo"
 	"steelyard/probes/infer"
@@ -219,23 +218,17 @@ func blocksOf(m estimate.Method, pr estimate.Probe, data []recipes.Data) []strin
 func (p *Plan) reported(m recipes.Reported) error {
 	name := "reported." + m.Name
 	stated := p.background
-	if c := m.Cosmology; c != nil {
+	if m.Cosmology != nil {
 		var err error
-		stated, err = cosmology.New(cosmology.Params{
-			HubbleConstant: c.HubbleConstant, OmegaMatter: c.OmegaMatter, OmegaLambda: c.OmegaLambda,
-			W0: c.W0, Wa: c.Wa, CMBTemperature: c.CMBTemperature,
-		})
-		if err != nil {
-			return fmt.Errorf("%s: %w", place(c.Range), err)
+		if stated, err = universe(*m.Cosmology); err != nil {
+			return err
 		}
 	}
 	t := &estimate.Task{Name: name, Object: p.object, Cosmology: p.background, Settings: p.lengths(m.Settings, reported.Settings())}
 	n := engine.Node{ID: name, Kind: "reported", Version: reported.Version, Where: place(m.Range)}
 	n.Params = append(p.backgroundFacts(), p.samplingFacts()...)
 	n.Params = append(n.Params, settingsFacts("reported", t.Settings)...)
-	q := stated.Params()
-	n.Params = append(n.Params, "stated_cosmology = "+exact(q.HubbleConstant)+" "+exact(q.OmegaMatter)+" "+exact(q.OmegaLambda)+
-		" "+exact(q.W0)+" "+exact(q.Wa)+" "+exact(q.CMBTemperature))
+	n.Params = append(n.Params, "stated_"+cosmologyFact(stated))
 	n.Run = func(ctx context.Context, job engine.Job) (engine.Output, error) {
 		t := *t
 		t.Sampling = p.sampling(&n, job)

@@ -29,13 +29,9 @@ type planned struct {
 
 // New plans the weighing of a recipe. An error names the line of the recipe.
 func New(r *recipes.Recipe) (*Plan, error) {
-	c := r.Cosmology
-	background, err := cosmology.New(cosmology.Params{
-		HubbleConstant: c.HubbleConstant, OmegaMatter: c.OmegaMatter, OmegaLambda: c.OmegaLambda,
-		W0: c.W0, Wa: c.Wa, CMBTemperature: c.CMBTemperature,
-	})
+	background, err := universe(r.Cosmology)
 	if err != nil {
-		return nil, fmt.Errorf("%s: %w", place(c.Range), err)
+		return nil, err
 	}
 	p := &Plan{
 		Recipe: r, background: background,
@@ -60,9 +56,25 @@ func New(r *recipes.Recipe) (*Plan, error) {
 	return p, nil
 }
 
+// universe is the background a recipe states; without omega_lambda it is flat.
+func universe(c recipes.Cosmology) (*cosmology.Cosmology, error) {
+	q := cosmology.Params{
+		HubbleConstant: c.HubbleConstant, OmegaMatter: c.OmegaMatter, OmegaLambda: c.OmegaLambda,
+		W0: c.W0, Wa: c.Wa, CMBTemperature: c.CMBTemperature,
+	}
+	if c.Flat && c.CMBTemperature != 0 {
+		q = q.Flat()
+	}
+	background, err := cosmology.New(q)
+	if err != nil {
+		return nil, fmt.Errorf("%s: %w", place(c.Range), err)
+	}
+	return background, nil
+}
+
 // header is the part of a weighing that the recipe alone decides.
 func (p *Plan) header() *weighing.Weighing {
-	c := p.Recipe.Cosmology
+	c := p.background.Params()
 	w := &weighing.Weighing{
 		Schema: weighing.Schema, Recipe: p.Recipe.File,
 		Object:    weighing.Object{Name: p.object.Name, Redshift: p.object.Redshift},

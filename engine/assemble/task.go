@@ -6,6 +6,7 @@ import (
 	"github.com/hashicorp/hcl/v2"
 
 	"steelyard/engine"
+	"steelyard/probes/cosmology"
 	"steelyard/probes/estimate"
 	"steelyard/probes/infer"
 	"steelyard/probes/method"
@@ -18,13 +19,17 @@ func place(r hcl.Range) string { return fmt.Sprintf("%s:%d", r.Filename, r.Start
 
 // backgroundFacts are the facts that every node knowing the object depends on.
 func (p *Plan) backgroundFacts() []string {
-	q := p.background.Params()
 	facts := []string{"redshift = " + exact(p.object.Redshift)}
 	if p.object.HasCentre {
 		facts = append(facts, "centre = "+exact(p.object.RA)+" "+exact(p.object.Dec))
 	}
-	return append(facts, "cosmology = "+exact(q.HubbleConstant)+" "+exact(q.OmegaMatter)+" "+exact(q.OmegaLambda)+
-		" "+exact(q.W0)+" "+exact(q.Wa)+" "+exact(q.CMBTemperature))
+	return append(facts, cosmologyFact(p.background))
+}
+
+func cosmologyFact(c *cosmology.Cosmology) string {
+	q := c.Params()
+	return "cosmology = " + exact(q.HubbleConstant) + " " + exact(q.OmegaMatter) + " " + exact(q.OmegaLambda) +
+		" " + exact(q.W0) + " " + exact(q.Wa) + " " + exact(q.CMBTemperature)
 }
 
 // exact renders a number for a node's key.

@@ -1,6 +1,7 @@
 package reconcile
 
 import (
+	"cmp"
 	"fmt"
 	"math"
 	"slices"
@@ -84,25 +85,22 @@ func chiSquare(m *Matched, members []int) (float64, error) {
 }
 
 const (
-	recombined = 4  // times the residuals of the estimates are paired anew
-	averaged   = 48 // values of the shared nuisances over which a density is averaged
-	nodes      = 24 // of the integral over the common ln M
-	reliable   = 30 // draws beyond zero below which a tail is fitted
+	nodes    = 16      // of the integral over the common ln M
+	effort   = 6000000 // evaluations of one estimate's density that an agreement may cost
+	reliable = 30      // draws beyond zero below which a tail is fitted
 )
 
-// contrastsLessLikely is the probability of contrasts less likely than zero.
+// contrastsLessLikely is the probability of contrasts less likely than zero. The
+// residuals of the estimates are paired anew as often as the effort allows, at
+// most four times.
 func contrastsLessLikely(m *Matched, members []int, stream infer.Stream) (p float64, fitted bool) {
 	residual, common := parts(m, members)
-	logs := make([]logDensity, len(members))
-	for k, r := range residual {
-		logs[k] = newLogDensity(r)
-	}
-	contrast := contrastDensity{logs: logs, shifts: spread(common, averaged)}
-	contrast.prepare()
+	contrast := newContrastDensity(residual, common)
 	n := len(residual[0])
-	values := make([]float64, 0, recombined*n)
+	turns := min(max(effort/(n*len(members)*nodes*len(contrast.shifts)), 1), 4)
+	values := make([]float64, 0, turns*n)
 	x := make([]float64, len(members))
-	for turn := range recombined {
+	for turn := range turns {
 		order := make([][]int, len(members))
 		for k := range members {
 			order[k] = stream.Sub(fmt.Sprintf("recombination %d", turn)).Rand(k).Perm(n)
@@ -135,23 +133,38 @@ func parts(m *Matched, members []int) (residual, common [][]float64) {
 	return residual, common
 }
 
-// spread picks, evenly through the draws, the shifts that the shared nuisances
-// give the estimates; a single row of zeros when nothing is shared.
-func spread(common [][]float64, count int) [][]float64 {
-	n := 0
-	for _, c := range common {
-		n = max(n, len(c))
+// spread picks the shifts that the shared nuisances give the estimates: rows of
+// draws evenly spaced in the order of the shift that varies most, as many as it
+// takes for neighbours to lie within a third of the narrowest residual, at least
+// 8 and at most 64. A single row of zeros when nothing is shared.
+func spread(residual, common [][]float64) [][]float64 {
+	widest, most, narrowest := -1, 0.0, math.Inf(1)
+	for k, c := range common {
+		_, sd := meanSD(residual[k])
+		narrowest = min(narrowest, sd)
+		if c == nil {
+			continue
+		}
+		if _, sd := meanSD(c); widest < 0 || sd > most {
+			widest, most = k, sd
+		}
 	}
-	if n == 0 {
+	if widest < 0 {
 		return [][]float64{make([]float64, len(common))}
 	}
-	count = min(count, n)
+	n := len(common[widest])
+	order := make([]int, n)
+	for i := range order {
+		order[i] = i
+	}
+	slices.SortStableFunc(order, func(a, b int) int { return cmp.Compare(common[widest][a], common[widest][b]) })
+	count := min(max(int(15*most/narrowest), 8), 64, n)
 	out := make([][]float64, count)
 	for s := range out {
 		out[s] = make([]float64, len(common))
 		for k, c := range common {
 			if c != nil {
-				out[s][k] = c[s*n/count]
+				out[s][k] = c[order[(2*s+1)*n/(2*count)]]
 			}
 		}
 	}
@@ -187,43 +200,50 @@ func (l *logDensity) log(x float64) float64 {
 type contrastDensity struct {
 	logs   []logDensity
 	shifts [][]float64 // of each estimate, one row a value of the shared nuisances
-	narrow int         // the estimate with the least spread, whose width sets the nodes
+	weight []float64   // of each estimate in the best common value
+	width  float64     // error of the best common value
+	terms  []float64   // scratch
 }
 
-func (c *contrastDensity) prepare() {
-	for k, l := range c.logs {
-		if l.sd < c.logs[c.narrow].sd {
-			c.narrow = k
-		}
+func newContrastDensity(residual, common [][]float64) *contrastDensity {
+	c := &contrastDensity{shifts: spread(residual, common)}
+	total := 0.0
+	for _, r := range residual {
+		l := newLogDensity(r)
+		c.logs = append(c.logs, l)
+		c.weight = append(c.weight, 1/(l.sd*l.sd))
+		total += 1 / (l.sd * l.sd)
 	}
+	for k := range c.weight {
+		c.weight[k] /= total
+	}
+	c.width = 1 / math.Sqrt(total)
+	c.terms = make([]float64, len(c.shifts)*nodes)
+	return c
 }
 
 // log integrates the product of the estimates' densities over a common shift of
-// x. The trapezium rule converges geometrically for smooth densities; the nodes
-// span where the product of normals of the estimates' means and spreads peaks.
+// x. The trapezium rule converges geometrically for smooth densities; its nodes
+// span five widths on both sides of where a product of normals would peak.
 func (c *contrastDensity) log(x []float64) float64 {
-	total := 0.0
 	best := math.Inf(-1)
-	terms := make([]float64, 0, len(c.shifts)*nodes)
-	for _, shift := range c.shifts {
-		weight, sum := 0.0, 0.0
-		for k, l := range c.logs {
-			w := 1 / (l.sd * l.sd)
-			weight += w
-			sum += w * (x[k] - shift[k] - l.mean)
+	for s, shift := range c.shifts {
+		center := 0.0
+		for k := range c.logs {
+			center += c.weight[k] * (x[k] - shift[k] - c.logs[k].mean)
 		}
-		center, width := sum/weight, 1/math.Sqrt(weight)
 		for i := range nodes {
-			u := center + width*(float64(i)/(nodes-1)-0.5)*10
-			log := math.Log(width)
+			u := center + c.width*(float64(i)/(nodes-1)-0.5)*10
+			log := 0.0
 			for k := range c.logs {
 				log += c.logs[k].log(x[k] - shift[k] - u)
 			}
 			best = max(best, log)
-			terms = append(terms, log)
+			c.terms[s*nodes+i] = log
 		}
 	}
-	for _, t := range terms {
+	total := 0.0
+	for _, t := range c.terms {
 		total += math.Exp(t - best)
 	}
 	return best + math.Log(total)
