@@ -6,22 +6,10 @@ import (
 	"steelyard/probes/estimate"
 	"steelyard/probes/halo"
 	"steelyard/probes/method"
-	"steelyard/probes/prior"
 )
 
-// The settings that methods of lensing share.
+// The assumptions that methods of lensing share.
 var (
-	massSetting = method.Setting{
-		Name: "mass", Kind: method.Number, Unit: "solMass", Low: 1e8, High: 1e18,
-		Default: method.Distributed(prior.LogUniform(1e12, 1e16)),
-		Doc:     "prior on M_200c",
-	}
-	concentrationSetting = method.Setting{
-		Name: "concentration", Kind: method.Number, Low: 0.1, High: 1000,
-		Relation: relationNames(), Default: method.Related("duffy-2008"),
-		Doc:    "c_200c of an NFW halo; an isothermal sphere has none",
-		Source: "Duffy et al. 2008, MNRAS 390, L64",
-	}
 	shearBiasSetting = method.Setting{
 		Name: "shear_bias", Kind: method.Number, Low: -0.9, High: 10, Default: method.Exactly(0),
 		Doc: "multiplicative calibration m of the shapes, g_obs = (1+m) g",
@@ -38,15 +26,13 @@ var (
 		Name: "elongation", Kind: method.Number, Low: 0.1, High: 10, Default: method.Exactly(1),
 		Doc: "multiplies the projected mass of the halo, at equal spherical mass: above 1 for a halo drawn out along the line of sight",
 	}
-)
-
-func relationNames() []string {
-	var names []string
-	for _, r := range halo.Relations() {
-		names = append(names, r.Name)
+	miscentringSetting = method.Setting{
+		Name: "miscentring", Kind: method.Number, Unit: "kpc", Length: true, Low: 0, High: 1e4, Default: method.Exactly(0),
+		Doc: "distance on the sky between the centre of the bins and that of the halo. A number is the scale of the Rayleigh distribution " +
+			"that the distance is drawn from; a prior is that of the distance itself",
+		Source: "Johnston et al. 2007, arXiv:0709.1159",
 	}
-	return names
-}
+)
 
 // assumed says in words what the named settings are, leaving out those that are
 // exactly at their default and so change nothing.
@@ -54,19 +40,25 @@ func assumed(t *estimate.Task, settings ...method.Setting) []string {
 	var lines []string
 	for _, s := range settings {
 		v := t.Settings[s.Name]
-		if !v.Set || v.Relation == "" && v.Nuisance == "" && v.Prior == s.Default.Prior && s.Default.Relation == "" {
-			continue
+		if v.Set && (v.Nuisance != "" || v.Prior != s.Default.Prior) {
+			lines = append(lines, stated(t, s))
 		}
-		line := s.Name + ": "
-		if v.Relation == "" {
-			line += v.Prior.String()
-		} else if r, ok := halo.FindRelation(v.Relation); ok {
-			line += fmt.Sprintf("relation %q (%s), scatter %.2g in ln", r.Name, r.Source, r.Scatter)
-		}
-		if v.Nuisance != "" {
-			line += fmt.Sprintf(" (nuisance.%s)", v.Nuisance)
-		}
-		lines = append(lines, line)
 	}
 	return lines
+}
+
+// stated says in words what a setting is.
+func stated(t *estimate.Task, s method.Setting) string {
+	v := t.Settings[s.Name]
+	line := s.Name + ": " + v.Prior.String()
+	if r, ok := halo.FindRelation(v.Relation); ok {
+		line = fmt.Sprintf("%s: relation %q (%s), scatter %.2g in ln", s.Name, r.Name, r.Source, r.Scatter)
+	}
+	if s.Unit != "" {
+		line += " " + s.Unit
+	}
+	if v.Nuisance != "" {
+		line += fmt.Sprintf(" (nuisance.%s)", v.Nuisance)
+	}
+	return line
 }

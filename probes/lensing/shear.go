@@ -36,20 +36,24 @@ type signal struct {
 	bins       []Bin
 	elongation float64 // multiplies the projected mass
 	distance   float64 // multiplies β
+	offset     float64 // distance of the bins' centre from the halo's, kpc
 	response   float64 // multiplies the shear: (1+m)(1−f)
 }
 
 // predict fills out with the shear expected in each bin: the reduced shear at
 // the bin's nodes, averaged over the bin.
-func (s signal) predict(m halo.Model, out []float64) {
+func (s *signal) predict(m halo.Model, out []float64) {
 	scale := s.elongation / s.critical
 	for i := range s.bins {
 		b := &s.bins[i]
 		beta, beta2 := s.distance*b.Beta, s.distance*s.distance*b.Beta2
+		at := func(R float64) float64 {
+			surface, mean := halo.Projected(m, R)
+			return ellipticity(reducedShear(scale*(mean-surface), scale*surface, beta, beta2))
+		}
 		sum := 0.0
 		for _, n := range b.Nodes {
-			surface, mean := halo.Projected(m, n.Radius)
-			sum += n.Share * ellipticity(reducedShear(scale*(mean-surface), scale*surface, beta, beta2))
+			sum += n.Share * aroundOffset(n.Radius, s.offset, at)
 		}
 		out[i] = s.response * sum
 	}

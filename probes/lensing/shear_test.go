@@ -103,7 +103,7 @@ func TestSignal(t *testing.T) {
 		{"farther sources", 1, 1.1, 1},
 		{"calibrated and diluted", 1, 1, 1.02 * 0.9},
 	} {
-		s := signal{critical, []Bin{{Beta: beta, Beta2: beta2, Nodes: []Node{{R, 1}}}}, x.elongation, x.distance, x.response}
+		s := signal{critical: critical, bins: []Bin{{Beta: beta, Beta2: beta2, Nodes: []Node{{R, 1}}}}, elongation: x.elongation, distance: x.distance, response: x.response}
 		var g [1]float64
 		s.predict(sphere, g[:])
 		k := kappa * x.elongation

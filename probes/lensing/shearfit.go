@@ -6,9 +6,7 @@ import (
 	"math"
 
 	"steelyard/probes/estimate"
-	"steelyard/probes/halo"
 	"steelyard/probes/infer"
-	"steelyard/probes/method"
 )
 
 // shearFit is one halo and one profile.
@@ -16,22 +14,18 @@ type shearFit struct {
 	task       *estimate.Task
 	profile    *Profile // the bins that are fitted
 	measure    *measure
-	threshold  float64 // mean density inside r_200c, Msun/kpc³
 	critical   float64 // Σ_cr of a source at infinity, Msun/kpc²
-	isothermal bool
-
-	parameters    estimate.Parameters
-	mass          estimate.Ref
-	concentration estimate.Concentration
-	shaped        bool // whether the concentration is drawn
-	bias          estimate.Ref
-	dilution      estimate.Ref
-	distance      estimate.Ref
-	elongation    estimate.Ref
+	parameters estimate.Parameters
+	halo       *massModel
+	bias       estimate.Ref
+	dilution   estimate.Ref
+	distance   estimate.Ref
+	elongation estimate.Ref
+	offset     offset
 }
 
 func newShearFit(t *estimate.Task, p *Profile) (*shearFit, error) {
-	f := &shearFit{task: t, isothermal: t.Settings["halo"].Text == "isothermal"}
+	f := &shearFit{task: t, critical: t.Cosmology.SigmaCritical(t.Object.Redshift, math.Inf(1))}
 	if terms := t.Settings["covariance"].List; len(terms) != 1 || terms[0] != "shape" {
 		return nil, t.Errorf("say `covariance = [\"shape\"]`: no other source of error is built yet")
 	}
@@ -42,23 +36,17 @@ func newShearFit(t *estimate.Task, p *Profile) (*shearFit, error) {
 	if f.measure, err = newMeasure(f.profile); err != nil {
 		return nil, t.Errorf("%w", err)
 	}
-	if f.threshold, err = (halo.Definition{Delta: 200, Of: "critical"}).Threshold(t.Cosmology, t.Object.Redshift); err != nil {
-		return nil, t.Errorf("%w", err)
-	}
-	f.critical = t.Cosmology.SigmaCritical(t.Object.Redshift, math.Inf(1))
 	ps := &f.parameters
-	f.mass = ps.Assume(method.Settings{"mass_200c": t.Settings["mass"]}, "mass_200c")
-	if !f.isothermal {
-		before := len(ps.Free)
-		if f.concentration, err = ps.Concentration(t); err != nil {
-			return nil, err
-		}
-		f.shaped = len(ps.Free) > before
+	if f.halo, err = newMassModel(t, ps); err != nil {
+		return nil, err
 	}
 	f.bias = ps.Assume(t.Settings, "shear_bias")
 	f.dilution = ps.Assume(t.Settings, "dilution")
 	f.distance = ps.Assume(t.Settings, "source_distance_scale")
 	f.elongation = ps.Assume(t.Settings, "elongation")
+	if f.offset, err = newOffset(t, ps); err != nil {
+		return nil, err
+	}
 	if len(ps.Free) == 0 {
 		return nil, t.Errorf("every parameter is an exact number, so there is nothing to fit")
 	}
@@ -89,34 +77,19 @@ func within(p *Profile, t *estimate.Task) (*Profile, error) {
 	return p.slice(first, end), nil
 }
 
-// model is the halo at theta; not ok where there is none.
-func (f *shearFit) model(theta []float64) (m halo.Model, ok bool) {
-	mass := f.mass.Of(theta)
-	if !(mass > 0) {
-		return nil, false
-	}
-	if f.isothermal {
-		return halo.NewIsothermal(mass, f.threshold), true
-	}
-	c := f.concentration.Of(theta, mass)
-	if !(c > 0) {
-		return nil, false
-	}
-	return halo.NewNFW(mass, c, f.threshold), true
-}
-
 // predict fills out with the shear expected in each bin at theta, and reports
 // whether there is a model.
 func (f *shearFit) predict(theta, out []float64) bool {
-	m, ok := f.model(theta)
+	m, ok := f.halo.at(theta)
 	if !ok {
 		return false
 	}
-	signal{
+	s := signal{
 		critical: f.critical, bins: f.profile.Bins,
-		elongation: f.elongation.Of(theta), distance: f.distance.Of(theta),
+		elongation: f.elongation.Of(theta), distance: f.distance.Of(theta), offset: f.offset.distance.Of(theta),
 		response: (1 + f.bias.Of(theta)) * (1 - f.dilution.Of(theta)),
-	}.predict(m, out)
+	}
+	s.predict(m, out)
 	return true
 }
 
@@ -129,7 +102,7 @@ func (f *shearFit) run(ctx context.Context) (*infer.Draws, error) {
 				if !f.predict(theta, expected) {
 					return math.Inf(-1)
 				}
-				return f.measure.logNorm - f.measure.chi2(expected)/2
+				return f.measure.logNorm - f.measure.chi2(expected)/2 + f.offset.lnDensity(theta)
 			}
 		},
 	}
@@ -142,50 +115,23 @@ func (f *shearFit) run(ctx context.Context) (*infer.Draws, error) {
 		return nil, f.task.Errorf("the best fit has no halo")
 	}
 	checks, warnings := f.profile.checks(best)
-	dof := len(f.profile.Bins)
-	if f.mass.Drawn() {
-		dof--
-	}
-	fit := estimate.Fit{
-		Sample: sample, Parameters: &f.parameters,
-		LnMass: func(theta, radii, out []float64) error {
-			m, _ := f.model(theta)
-			for i, r := range radii {
-				out[i] = math.Log(m.Mass(r))
-			}
-			return nil
-		},
+	return f.task.Finish(estimate.Fit{
+		Sample: sample, Parameters: &f.parameters, LnMass: f.halo.lnMass, Derived: f.halo.derived(),
 		Covers: [2]float64{f.profile.Bins[0].Inner, f.profile.Bins[len(f.profile.Bins)-1].Outer},
-		Chi2:   f.measure.chi2(best), Assumes: f.assumes(), Checks: checks, Warnings: warnings,
-	}
-	switch {
-	case f.isothermal:
-		fit.Derived = append(fit.Derived, estimate.Derived{Name: "dispersion", Unit: "km/s", Of: func(theta []float64) float64 {
-			return halo.NewIsothermal(f.mass.Of(theta), f.threshold).Sigma
-		}})
-	case f.concentration.Related():
-		fit.Derived = append(fit.Derived, estimate.Derived{Name: "concentration", Of: func(theta []float64) float64 {
-			return f.concentration.Of(theta, f.mass.Of(theta))
-		}})
-	}
-	if f.shaped {
-		dof--
-	}
-	fit.Dof = max(dof, 0)
-	return f.task.Finish(fit)
+		Chi2:   f.measure.chi2(best), Dof: max(len(f.profile.Bins)-f.halo.drawn, 0),
+		Assumes: f.assumes(), Checks: checks, Warnings: warnings,
+	})
 }
 
 // assumes says in words what the masses rest on beside the prior on the mass.
 func (f *shearFit) assumes() []string {
 	t := f.task
-	lines := []string{"halo: NFW, with an infinite line of sight"}
-	shared := []method.Setting{shearBiasSetting, dilutionSetting, distanceScaleSetting, elongationSetting}
-	if f.isothermal {
-		lines[0] = "halo: singular isothermal sphere, with an infinite line of sight"
+	lines := append(f.halo.assumes(t), assumed(t, shearBiasSetting, dilutionSetting, distanceScaleSetting, elongationSetting)...)
+	if f.offset.rayleigh > 0 {
+		lines = append(lines, fmt.Sprintf("miscentring: drawn from a Rayleigh distribution of scale %.4g kpc", f.offset.rayleigh))
 	} else {
-		shared = append([]method.Setting{concentrationSetting}, shared...)
+		lines = append(lines, assumed(t, miscentringSetting)...)
 	}
-	lines = append(lines, assumed(t, shared...)...)
 	beta, weight := 0.0, 0.0
 	for _, b := range f.profile.Bins {
 		w := 1 / (b.Error() * b.Error())

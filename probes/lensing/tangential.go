@@ -2,6 +2,7 @@ package lensing
 
 import (
 	"context"
+	"slices"
 
 	"steelyard/probes/estimate"
 	"steelyard/probes/infer"
@@ -22,13 +23,7 @@ var tangentialShear = estimate.Method{
 			"Navarro, Frenk & White 1997, ApJ 490, 493 (halo)",
 		},
 		Data: [][]string{{"galaxies", "bins"}, {"profile"}},
-		Settings: []method.Setting{
-			{
-				Name: "halo", Kind: method.Choice, Choices: []string{"nfw", "isothermal"},
-				Planned: []string{"einasto", "hernquist", "cored-isothermal"}, Default: method.Word("nfw"),
-				Doc: "the mass model",
-			},
-			massSetting, concentrationSetting,
+		Settings: append(slices.Clone(haloSettings), []method.Setting{
 			{
 				Name: "covariance", Kind: method.Choices, Choices: []string{"shape"}, Planned: []string{"structure", "halo"}, Required: true,
 				Doc: "which sources of error the fit counts. Only `shape`, the noise of the galaxies' own shapes, is built yet, and it must be named: " +
@@ -38,8 +33,8 @@ var tangentialShear = estimate.Method{
 				Name: "fit_within", Kind: method.Span, Unit: "kpc", Length: true,
 				Doc: "use only the bins that lie wholly between these radii",
 			},
-			shearBiasSetting, dilutionSetting, distanceScaleSetting, elongationSetting,
-		},
+			shearBiasSetting, dilutionSetting, distanceScaleSetting, elongationSetting, miscentringSetting,
+		}...),
 		Cautions: []string{
 			"The mean over sources is of second order in κ: where g exceeds 0.3 it is low by several per cent; leave such bins out with fit_within.",
 			"With shape noise alone the error does not hold structure along the line of sight, which adds about as much for a massive cluster at large radii (Hoekstra 2003, MNRAS 339, 1155).",
