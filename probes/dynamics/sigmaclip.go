@@ -1,0 +1,70 @@
+package dynamics
+
+import (
+	"fmt"
+	"math"
+)
+
+// clipConcentration is r_200/r_s of the halo whose σ(R) the clipping follows; 4
+// is typical of clusters (Mamon, Biviano & Boué 2013, section 3).
+const clipConcentration = 4
+
+// sigmaClip keeps the galaxies within so many times the local dispersion,
+//
+//	|v| < κ σ(R),
+//
+// σ(R) being the line-of-sight dispersion of an isotropic NFW halo scaled so
+// that its mean over the members is their measured dispersion; its scale radius
+// follows from that dispersion by the relation of Evrard et al. 2008. κ = 2.7
+// is what keeps most members at least contamination (Mamon, Biviano & Murante
+// 2010). Galaxies may come back in a later round.
+func (f *field) sigmaClip(group []candidate) ([]string, error) {
+	clip := f.number("clip")
+	local := make([]float64, len(group))
+	err := f.settle(group, func() error {
+		v := recentre(group)
+		sigma := scaleNamed("automatic", len(v)).of(sorted(v), nil)
+		rs := f.radius200(sigma) / clipConcentration
+		mean, n := 0.0, 0.0
+		for k, c := range group {
+			local[k] = losTable().at(math.Log(c.radius / rs))
+			if c.member {
+				mean += local[k]
+				n++
+			}
+		}
+		for k := range group {
+			local[k] = sigma * math.Sqrt(local[k]*n/mean)
+			group[k].member = math.Abs(group[k].velocity) < clip*local[k]
+		}
+		return nil
+	})
+	reasons := make([]string, len(group))
+	for k, c := range group {
+		side := "within"
+		if !c.member {
+			side = "beyond"
+		}
+		reasons[k] = fmt.Sprintf("%+.0f km/s at %.0f kpc, %s %.3g times the local %.0f km/s", c.velocity, c.radius, side, clip, local[k])
+	}
+	f.note("members: %d galaxies within %.3g times the local dispersion of an isotropic NFW halo (Mamon, Biviano & Murante 2010)", countMembers(group), clip)
+	return reasons, err
+}
+
+// radius200 is r_200 in kpc of a halo of dispersion sigma by the relation for
+// dark matter of Evrard et al. 2008.
+func (f *field) radius200(sigma float64) float64 {
+	z := f.task.Object.Redshift
+	m200 := evrard2008.mass(sigma, f.task.Cosmology.H(z)/100)
+	return math.Cbrt(m200 / (4 * math.Pi / 3 * 200 * f.task.Cosmology.CriticalDensity(z)))
+}
+
+func countMembers(group []candidate) int {
+	n := 0
+	for _, c := range group {
+		if c.member {
+			n++
+		}
+	}
+	return n
+}
