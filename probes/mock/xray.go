@@ -32,19 +32,11 @@ type SpectraData struct {
 func (t Truth) Spectra(g Gas, s Spectra, rng *rand.Rand) *SpectraData {
 	a, d := t.Atmosphere(g), new(SpectraData)
 	kpc := t.AngularDiameter(t.Redshift) * math.Pi / 180 / 60 // in an arcmin
-	normal := func() float64 {
-		if rng == nil {
-			return 0
-		}
-		return rng.NormFloat64()
-	}
 	for i := range len(s.DensityEdges) - 1 {
 		inner, outer := s.DensityEdges[i], s.DensityEdges[i+1]
 		n := a.Shell(inner*kpc, outer*kpc)
-		sigma := s.DensityError * n
 		d.DensityInner, d.DensityOuter = append(d.DensityInner, inner), append(d.DensityOuter, outer)
-		d.Density = append(d.Density, n+sigma*normal())
-		d.DensityError = append(d.DensityError, sigma)
+		d.Density, d.DensityError = append(d.Density, n), append(d.DensityError, s.DensityError*n)
 	}
 	if s.Scale == 0 {
 		s.Scale = 1
@@ -52,20 +44,31 @@ func (t Truth) Spectra(g Gas, s Spectra, rng *rand.Rand) *SpectraData {
 	for i := range len(s.TemperatureEdges) - 1 {
 		inner, outer := s.TemperatureEdges[i], s.TemperatureEdges[i+1]
 		kT := a.Spectral(inner*kpc, outer*kpc) / s.Scale
-		minus, plus := s.TemperatureErrors[i]*kT*(1-s.Skew), s.TemperatureErrors[i]*kT*(1+s.Skew)
 		d.TemperatureInner, d.TemperatureOuter = append(d.TemperatureInner, inner), append(d.TemperatureOuter, outer)
-		d.TemperatureErrorMinus, d.TemperatureErrorPlus = append(d.TemperatureErrorMinus, minus), append(d.TemperatureErrorPlus, plus)
-		// A datum below the truth has the truth above it, where the upper error
-		// holds; the two halves meet at the truth.
-		below, above := math.Hypot(plus, s.Scatter*kT), math.Hypot(minus, s.Scatter*kT)
-		if rng != nil {
-			if rng.Float64() < below/(below+above) {
-				kT -= below * math.Abs(normal())
-			} else {
-				kT += above * math.Abs(normal())
-			}
-		}
 		d.Temperature = append(d.Temperature, kT)
+		d.TemperatureErrorMinus = append(d.TemperatureErrorMinus, s.TemperatureErrors[i]*kT*(1-s.Skew))
+		d.TemperatureErrorPlus = append(d.TemperatureErrorPlus, s.TemperatureErrors[i]*kT*(1+s.Skew))
+	}
+	if rng != nil {
+		d.addNoise(s.Scatter, rng)
 	}
 	return d
+}
+
+// addNoise moves exact profiles by their errors and the scatter of spectral
+// temperatures. A datum below the truth has the truth above it, where its upper
+// error holds, and the other way round; the two halves meet at the truth.
+func (d *SpectraData) addNoise(scatter float64, rng *rand.Rand) {
+	for i := range d.Density {
+		d.Density[i] += d.DensityError[i] * rng.NormFloat64()
+	}
+	for i, kT := range d.Temperature {
+		below := math.Hypot(d.TemperatureErrorPlus[i], scatter*kT)
+		above := math.Hypot(d.TemperatureErrorMinus[i], scatter*kT)
+		if rng.Float64() < below/(below+above) {
+			d.Temperature[i] -= below * math.Abs(rng.NormFloat64())
+		} else {
+			d.Temperature[i] += above * math.Abs(rng.NormFloat64())
+		}
+	}
 }

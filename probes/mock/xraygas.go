@@ -156,3 +156,23 @@ func (a *Atmosphere) Shell(r1, r2 float64) float64 {
 	}
 	return math.Sqrt(sum / volume)
 }
+
+// FineSpectral is Spectral with finer cuts, to 1e-8 away from the centre.
+func (a *Atmosphere) FineSpectral(r1, r2 float64) float64 {
+	coarse, fine := a.spectral(r1, r2, 75, 0.04), a.spectral(r1, r2, 150, 0.04)
+	return fine + (fine-coarse)/3
+}
+
+// ShellTemperature is what a spectrum of the spherical shell between r1 and r2
+// kpc would yield.
+func (a *Atmosphere) ShellTemperature(r1, r2 float64) float64 {
+	const cuts = 2000
+	var hot, cold float64
+	for i := range cuts {
+		r := r1 + (r2-r1)*(float64(i)+0.5)/cuts
+		n, kT := a.gas.Electrons(r), a.Temperature(r)
+		hot += r * r * n * n * math.Pow(kT, 0.25)
+		cold += r * r * n * n * math.Pow(kT, -0.75)
+	}
+	return hot / cold
+}

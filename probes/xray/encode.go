@@ -65,7 +65,15 @@ func (d *decoder) bits() uint64 {
 	return 0
 }
 
-func (d *decoder) number() float64 { return math.Float64frombits(d.bits()) }
+// number reads a finite number; anything else is a fault.
+func (d *decoder) number() float64 {
+	x := math.Float64frombits(d.bits())
+	if math.IsNaN(x) || math.IsInf(x, 0) || x == 0 && math.Signbit(x) {
+		d.bad = true
+		return 0
+	}
+	return x
+}
 
 // count reads a length; one that the bytes left cannot hold is a fault.
 func (d *decoder) count() int {

@@ -34,7 +34,7 @@ func fitShells(form Form, shells *Bins) (*Gas, error) {
 	if err != nil {
 		return nil, err
 	}
-	if form == ModifiedBeta && g.Dof > 3 && infer.ChiSquareSurvival(g.Chi2, g.Dof) < secondComponent {
+	if form == ModifiedBeta && g.Dof > 3 && infer.ChiSquareP(g.Chi2, g.Dof) < secondComponent {
 		two, _, err := fitFamily(newFamily(form, shells).second(x, shells), shells)
 		if err == nil && g.Chi2-two.Chi2 > 3*math.Log(float64(shells.Len())) {
 			return two, nil

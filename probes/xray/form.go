@@ -69,12 +69,12 @@ func (f Form) lnElectrons(p []float64, r float64) float64 {
 		return logAdd(lnBeta(p[0], p[1], p[2], r), lnBeta(p[3], p[4], p[5], r))
 	case ModifiedBeta:
 		n0, rc, beta, alpha, rs, epsilon, gamma := p[0], p[1], p[2], p[3], p[4], p[5], p[6]
-		ln := 2*math.Log(n0) - (3*beta-alpha/2)*math.Log1p(r*r/(rc*rc))
+		ln := 2*math.Log(n0) - (3*beta-alpha/2)*math.Log(1+r*r/(rc*rc))
 		if alpha != 0 {
 			ln -= alpha * math.Log(r/rc)
 		}
 		if epsilon != 0 {
-			ln -= epsilon / gamma * math.Log1p(power(r/rs, gamma))
+			ln -= epsilon / gamma * math.Log(1+power(r/rs, gamma))
 		}
 		if p[7] > 0 {
 			ln = logAdd(ln, 2*lnBeta(p[7], p[8], p[9], r))
@@ -112,7 +112,7 @@ func (f Form) slope(p []float64, r float64) float64 {
 }
 
 func lnBeta(n0, rc, beta, r float64) float64 {
-	return math.Log(n0) - 1.5*beta*math.Log1p(r*r/(rc*rc))
+	return math.Log(n0) - 1.5*beta*math.Log(1+r*r/(rc*rc))
 }
 
 func slopeBeta(rc, beta, r float64) float64 { return -3 * beta * r * r / (rc*rc + r*r) }
@@ -130,5 +130,5 @@ func logAdd(a, b float64) float64 {
 	if a < b {
 		a, b = b, a
 	}
-	return a + math.Log1p(math.Exp(b-a))
+	return a + math.Log(1+math.Exp(b-a))
 }

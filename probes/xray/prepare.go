@@ -93,7 +93,7 @@ func (m *backwardModel) fit(scatter float64) (bestFit, error) {
 	b := bestFit{theta: theta, dof: max(n-m.fitted, 0), pValue: 1}
 	b.chi2 = floats.Dot(out[:n], out[:n]) + floats.Dot(best[m.fitted:], best[m.fitted:])
 	if b.dof > 0 {
-		b.pValue = infer.ChiSquareSurvival(b.chi2, b.dof)
+		b.pValue = infer.ChiSquareP(b.chi2, b.dof)
 	}
 	return b, nil
 }

@@ -77,7 +77,7 @@ func (m *backwardModel) warnings(q bestFit) []string {
 	}
 	if g.Shells > 0 {
 		if g.Dof > 0 {
-			if p := infer.ChiSquareSurvival(g.Chi2, g.Dof); p < poorFit {
+			if p := infer.ChiSquareP(g.Chi2, g.Dof); p < poorFit {
 				w = append(w, fmt.Sprintf("the density form fits the shells poorly: χ² = %.0f for %d degrees of freedom (p = %.1g); its error is too small", g.Chi2, g.Dof, p))
 			}
 		}
