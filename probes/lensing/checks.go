@@ -9,7 +9,7 @@ import (
 
 // strong is the reduced shear above which the mean over sources to second order
 // is no longer good to a per cent or two (common practice, no source).
-const strong = 0.3
+const strong = 0.3 // as the name of the check says
 
 // sparse is the number of sources below which the mean of a bin is not yet
 // normally distributed (common practice, no source).
@@ -76,16 +76,16 @@ func (p *Profile) checks(expected []float64) (checks []infer.Check, warnings []s
 	}
 	s, flipped, first := p.signalToNoise()
 	add(infer.Check{
-		Name: "tangential signal", Statistic: s, PValue: -1, Passed: s > 2,
-		Note: "signal-to-noise of a 1/R profile",
+		Name: "tangential signal-to-noise", Statistic: s, PValue: -1, Passed: s > 2,
+		Note: "of a 1/R profile",
 	}, fmt.Sprintf("no tangential shear to speak of: signal-to-noise %.1f", s))
 	if p.Counted {
 		c, warning := handedness(s, flipped)
 		add(c, warning)
 	}
 	add(infer.Check{
-		Name: "weight in the first bin", Statistic: first, PValue: -1, Passed: first < 0.5,
-		Note: "its share in that signal-to-noise squared",
+		Name: "share of weight in the first bin", Statistic: first, PValue: -1, Passed: first < 0.5,
+		Note: "in that signal-to-noise squared",
 	}, fmt.Sprintf("the first bin alone carries %.0f%% of the weight", 100*first))
 	if p.Counted {
 		fewest := p.Bins[0]
@@ -95,8 +95,7 @@ func (p *Profile) checks(expected []float64) (checks []infer.Check, warnings []s
 			}
 		}
 		add(infer.Check{
-			Name: "sources per bin", Statistic: float64(fewest.Sources), PValue: -1, Passed: fewest.Sources >= sparse,
-			Note: "in the emptiest bin",
+			Name: "fewest sources in a bin", Statistic: float64(fewest.Sources), PValue: -1, Passed: fewest.Sources >= sparse,
 		}, fmt.Sprintf("only %d sources between %.4g and %.4g kpc: their mean is hardly normal", fewest.Sources, fewest.Inner, fewest.Outer))
 	}
 	beyond := 0
@@ -106,8 +105,8 @@ func (p *Profile) checks(expected []float64) (checks []infer.Check, warnings []s
 		}
 	}
 	add(infer.Check{
-		Name: "strong shear", Statistic: float64(beyond), PValue: -1, Passed: beyond == 0,
-		Note: fmt.Sprintf("bins where the best fit has g above %g", strong),
+		Name: "bins with g above 0.3", Statistic: float64(beyond), PValue: -1, Passed: beyond == 0,
+		Note: "of the best fit",
 	}, fmt.Sprintf("the best fit has a reduced shear above %g in %d of %d bins: there the mean over the sources' redshifts errs by several per cent; the bins were kept, and fit_within leaves them out", strong, beyond, len(expected)))
 	return checks, warnings
 }
@@ -141,8 +140,8 @@ func handedness(s, flipped float64) (infer.Check, string) {
 		best, what = -s, "the signs of e1 and e2 reversed; the shapes are perhaps drawn out towards the centre"
 	}
 	c := infer.Check{
-		Name: "handedness", Statistic: best, PValue: -1, Passed: !(best > 3 && best-s > 3),
-		Note: "best tangential signal-to-noise with a sign of e1 or e2 reversed",
+		Name: "best signal with a sign reversed", Statistic: best, PValue: -1, Passed: !(best > 3 && best-s > 3),
+		Note: "the tangential signal-to-noise if e1, e2 or both had the other sign",
 	}
 	return c, fmt.Sprintf("the tangential signal-to-noise is %.1f, but %.1f with %s", s, best, what)
 }

@@ -110,7 +110,7 @@ func TestHandedness(t *testing.T) {
 	if cross := p.crossCheck(); !cross.Passed {
 		t.Errorf("the cross shear of a mirrored catalogue is %g with p = %g", cross.Statistic, cross.PValue)
 	}
-	if check := find(t, d, "handedness"); check.Passed || check.Statistic < 8 {
+	if check := find(t, d, "best signal with a sign reversed"); check.Passed || check.Statistic < 8 {
 		t.Errorf("mirrored: %+v", check)
 	}
 	if w := strings.Join(d.Warnings, "\n"); !strings.Contains(w, "sign of e2 reversed; set `handedness`") {
@@ -119,7 +119,7 @@ func TestHandedness(t *testing.T) {
 
 	mirrored.Blocks["galaxies"] = method.Settings{"handedness": method.Word("west")}
 	_, d = fitted(t, mirrored, settings)
-	if check := find(t, d, "handedness"); !check.Passed {
+	if check := find(t, d, "best signal with a sign reversed"); !check.Passed {
 		t.Errorf("undone: %+v", check)
 	}
 

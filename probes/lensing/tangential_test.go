@@ -195,7 +195,7 @@ func TestStrongShear(t *testing.T) {
 	threshold := 200 * background(t).CriticalDensity(0.25)
 	settings := defaults(tangentialShear)
 	_, d := fitted(t, profileOf(t, halo.NewNFW(3e15, 8, threshold), 0.002), settings)
-	if c := find(t, d, "strong shear"); c.Passed || c.Statistic < 1 {
+	if c := find(t, d, "bins with g above 0.3"); c.Passed || c.Statistic < 1 {
 		t.Errorf("%+v", c)
 	}
 	if w := strings.Join(d.Warnings, "\n"); !strings.Contains(w, "above 0.3 in") {
@@ -207,7 +207,7 @@ func TestNothing(t *testing.T) {
 	task := profileTask(t, column("error", "", 0.02, 0.02, 0.02, 0.02, 0.02))
 	clear(task.Tables["profile"].Values("value"))
 	_, d := fitted(t, task, defaults(tangentialShear))
-	if c := find(t, d, "tangential signal"); c.Passed || c.Statistic != 0 {
+	if c := find(t, d, "tangential signal-to-noise"); c.Passed || c.Statistic != 0 {
 		t.Errorf("%+v", c)
 	}
 	w := strings.Join(d.Warnings, "\n")
