@@ -155,7 +155,7 @@ func writeRows(w io.Writer, columns []OutColumn, widths []int, rows, rowWidth in
 			switch c := &columns[i]; {
 			case c.Text != nil:
 				row = append(row, c.Text[r]...)
-				row = append(row, strings.Repeat(" ", widths[i]-len(c.Text[r]))...)
+				row = append(row, make([]byte, widths[i]-len(c.Text[r]))...)
 			case c.Integer:
 				row = binary.BigEndian.AppendUint64(row, uint64(int64(c.Values[r])))
 			default:

@@ -52,7 +52,7 @@ func decimalTimes(text string, factor *big.Rat) (float64, error) {
 	}
 	x, err := exact(text)
 	if err != nil {
-		return 0, err
+		return 0, ErrRange // beyond the bounds of exact
 	}
 	return rounded(x.Mul(x, factor))
 }

@@ -38,19 +38,17 @@ func NewConverter(from, to Unit) (*Converter, error) {
 
 // Decimal converts a number written as a decimal, like the function Decimal.
 func (c *Converter) Decimal(text string) (float64, error) {
+	if c.one && isDecimal(text) {
+		if x, err := strconv.ParseFloat(text, 64); err == nil && x != 0 {
+			return x, nil
+		}
+	}
 	negative, mantissa, exponent, ok := split(text)
 	if !ok {
 		return decimalTimes(text, c.factor)
 	}
 	if mantissa == 0 {
 		return 0, nil
-	}
-	if c.one {
-		x, err := strconv.ParseFloat(text, 64)
-		if err != nil || x == 0 {
-			return 0, ErrRange
-		}
-		return x, nil
 	}
 	x, ok := c.multiply(mantissa, exponent)
 	if !ok {
@@ -146,16 +144,30 @@ func nearest(hi, lo float64, f double) (float64, bool) {
 	return below, below == above
 }
 
+// isDecimal reports whether the text is a decimal number, sign allowed, of a
+// usual length and nothing else.
+func isDecimal(text string) bool {
+	if text == "" || len(text) > 40 {
+		return false
+	}
+	i := 0
+	if text[0] == '+' || text[0] == '-' {
+		i = 1
+	}
+	end := scanNumber(text, i)
+	return end > i && end == len(text)
+}
+
 // split reads a decimal of at most 18 digits as ± mantissa × 10**exponent; ok
 // is false for anything else, numbers of more digits among it.
 func split(text string) (negative bool, mantissa uint64, exponent int, ok bool) {
+	if !isDecimal(text) {
+		return false, 0, 0, false
+	}
 	i := 0
-	if text != "" && (text[0] == '+' || text[0] == '-') {
+	if text[0] == '+' || text[0] == '-' {
 		negative = text[0] == '-'
 		i = 1
-	}
-	if end := scanNumber(text, i); end == i || end != len(text) || len(text) > 40 {
-		return false, 0, 0, false
 	}
 	digits, point := 0, false
 	for ; i < len(text) && text[i]|0x20 != 'e'; i++ {
