@@ -10,6 +10,7 @@ import (
 
 	"steelyard/probes/catalogue"
 	"steelyard/probes/estimate"
+	"steelyard/probes/halo"
 	"steelyard/probes/infer"
 	"steelyard/probes/method"
 	"steelyard/probes/mock"
@@ -36,7 +37,7 @@ func TestReduceWithoutNoise(t *testing.T) {
 	if len(p.Bins) != 10 {
 		t.Fatalf("%d bins", len(p.Bins))
 	}
-	f := newTruthFit(t, p)
+	f := truthShear(t, p)
 	for i, b := range p.Bins {
 		// β scatters from source to source by 40% and so does g, of which a bin
 		// averages hundreds; its ⟨β⟩ takes that scatter out. Second order leaves
@@ -51,19 +52,12 @@ func TestReduceWithoutNoise(t *testing.T) {
 	}
 }
 
-// newTruthFit is the shear that the package expects of curlew in the bins.
-func newTruthFit(t testing.TB, p *Profile) []float64 {
+// truthShear is the shear that the package expects of curlew in the bins.
+func truthShear(t testing.TB, p *Profile) []float64 {
 	t.Helper()
-	task := &estimate.Task{Name: "truth", Object: estimate.Object{Redshift: curlew.Redshift}, Cosmology: background(t), Settings: defaults(tangentialShear)}
-	task.Settings["concentration"] = method.Exactly(curlew.C200)
-	f, err := newShearFit(task, p)
-	if err != nil {
-		t.Fatal(err)
-	}
 	out := make([]float64, len(p.Bins))
-	if !f.predict([]float64{curlew.M200}, out) {
-		t.Fatal("no model")
-	}
+	s := signal{critical: background(t).SigmaCritical(curlew.Redshift, math.Inf(1)), bins: p.Bins, elongation: 1, distance: 1, response: 1}
+	s.predict(halo.NewNFW(curlew.M200, curlew.C200, 200*background(t).CriticalDensity(curlew.Redshift)), out)
 	return out
 }
 
@@ -78,7 +72,7 @@ func TestErrorsFromDispersion(t *testing.T) {
 	for k := range catalogues {
 		c := curlew.Shapes(faint, rand.New(rand.NewPCG(7, uint64(k))))
 		p := reduced(t, shapeTask(t, curlew, c))
-		expected := newTruthFit(t, p)
+		expected := truthShear(t, p)
 		for i, b := range p.Bins[2:] { // beyond the reach of the second order
 			d := (b.Shear - expected[i+2]) / b.Plus
 			pulls += d * d

@@ -1,56 +1,48 @@
 package lensing
 
 import (
-	"context"
 	"fmt"
 	"math"
 
 	"steelyard/probes/estimate"
-	"steelyard/probes/infer"
 )
 
-// shearFit is one halo and one profile.
-type shearFit struct {
-	task       *estimate.Task
-	profile    *Profile // the bins that are fitted
-	measure    *measure
-	critical   float64 // Σ_cr of a source at infinity, Msun/kpc²
-	parameters estimate.Parameters
-	halo       *massModel
-	bias       estimate.Ref
-	dilution   estimate.Ref
-	distance   estimate.Ref
-	elongation estimate.Ref
-	offset     offset
+// shearPart holds a halo to the tangential shear of a profile.
+type shearPart struct {
+	task     *estimate.Task
+	profile  *Profile // the bins that are fitted
+	measure  *measure
+	critical float64 // Σ_cr of a source at infinity, Msun/kpc²
+	bias     estimate.Ref
+	dilution estimate.Ref
+	offset   offset
 }
 
-func newShearFit(t *estimate.Task, p *Profile) (*shearFit, error) {
-	f := &shearFit{task: t, critical: t.Cosmology.SigmaCritical(t.Object.Redshift, math.Inf(1))}
+// addShear adds the shear profile that the task's reduction made.
+func (f *lensFit) addShear() error {
+	t := f.task
 	if terms := t.Settings["covariance"].List; len(terms) != 1 || terms[0] != "shape" {
-		return nil, t.Errorf("say `covariance = [\"shape\"]`: no other source of error is built yet")
+		return t.Errorf("say `covariance = [\"shape\"]`: no other source of error is built yet")
 	}
+	p := new(Profile)
+	if err := p.UnmarshalBinary(t.Reduced["profile"]); err != nil {
+		return t.Errorf("%w", err)
+	}
+	s := &shearPart{task: t, critical: t.Cosmology.SigmaCritical(t.Object.Redshift, math.Inf(1))}
 	var err error
-	if f.profile, err = within(p, t); err != nil {
-		return nil, t.Errorf("%w", err)
+	if s.profile, err = within(p, t); err != nil {
+		return t.Errorf("%w", err)
 	}
-	if f.measure, err = newMeasure(f.profile); err != nil {
-		return nil, t.Errorf("%w", err)
+	if s.measure, err = newMeasure(s.profile); err != nil {
+		return t.Errorf("%w", err)
 	}
-	ps := &f.parameters
-	if f.halo, err = newMassModel(t, ps); err != nil {
-		return nil, err
+	s.bias = f.parameters.Assume(t.Settings, "shear_bias")
+	s.dilution = f.parameters.Assume(t.Settings, "dilution")
+	if s.offset, err = newOffset(t, &f.parameters); err != nil {
+		return err
 	}
-	f.bias = ps.Assume(t.Settings, "shear_bias")
-	f.dilution = ps.Assume(t.Settings, "dilution")
-	f.distance = ps.Assume(t.Settings, "source_distance_scale")
-	f.elongation = ps.Assume(t.Settings, "elongation")
-	if f.offset, err = newOffset(t, ps); err != nil {
-		return nil, err
-	}
-	if len(ps.Free) == 0 {
-		return nil, t.Errorf("every parameter is an exact number, so there is nothing to fit")
-	}
-	return f, nil
+	f.parts = append(f.parts, s)
+	return nil
 }
 
 // within returns the part of the profile that `fit_within` asks for.
@@ -77,71 +69,54 @@ func within(p *Profile, t *estimate.Task) (*Profile, error) {
 	return p.slice(first, end), nil
 }
 
-// predict fills out with the shear expected in each bin at theta, and reports
-// whether there is a model.
-func (f *shearFit) predict(theta, out []float64) bool {
-	m, ok := f.halo.at(theta)
-	if !ok {
-		return false
+// predict fills out with the shear expected in each bin.
+func (s *shearPart) predict(l lens, out []float64) {
+	between := signal{
+		critical: s.critical, bins: s.profile.Bins,
+		elongation: l.elongation, distance: l.distance, offset: s.offset.distance.Of(l.theta),
+		response: (1 + s.bias.Of(l.theta)) * (1 - s.dilution.Of(l.theta)),
 	}
-	s := signal{
-		critical: f.critical, bins: f.profile.Bins,
-		elongation: f.elongation.Of(theta), distance: f.distance.Of(theta), offset: f.offset.distance.Of(theta),
-		response: (1 + f.bias.Of(theta)) * (1 - f.dilution.Of(theta)),
-	}
-	s.predict(m, out)
-	return true
+	between.predict(l.Model, out)
 }
 
-func (f *shearFit) run(ctx context.Context) (*infer.Draws, error) {
-	problem := infer.Problem{
-		Free: f.parameters.Free,
-		Likelihood: func() func([]float64) float64 {
-			expected := make([]float64, len(f.profile.Bins))
-			return func(theta []float64) float64 {
-				if !f.predict(theta, expected) {
-					return math.Inf(-1)
-				}
-				return f.measure.logNorm - f.measure.chi2(expected)/2 + f.offset.lnDensity(theta)
-			}
-		},
+func (s *shearPart) likelihood() func(lens) float64 {
+	expected := make([]float64, len(s.profile.Bins))
+	return func(l lens) float64 {
+		s.predict(l, expected)
+		return s.measure.logNorm - s.measure.chi2(expected)/2 + s.offset.lnDensity(l.theta)
 	}
-	sample, err := infer.DrawPosterior(ctx, problem, f.task.Sampling)
-	if err != nil {
-		return nil, f.task.Errorf("%w", err)
-	}
-	best := make([]float64, len(f.profile.Bins))
-	if !f.predict(sample.Best, best) {
-		return nil, f.task.Errorf("the best fit has no halo")
-	}
-	checks, warnings := f.profile.checks(best)
-	return f.task.Finish(estimate.Fit{
-		Sample: sample, Parameters: &f.parameters, LnMass: f.halo.lnMass, Derived: f.halo.derived(),
-		Covers: [2]float64{f.profile.Bins[0].Inner, f.profile.Bins[len(f.profile.Bins)-1].Outer},
-		Chi2:   f.measure.chi2(best), Dof: max(len(f.profile.Bins)-f.halo.drawn, 0),
-		Assumes: f.assumes(), Checks: checks, Warnings: warnings,
-	})
 }
 
-// assumes says in words what the masses rest on beside the prior on the mass.
-func (f *shearFit) assumes() []string {
-	t := f.task
-	lines := append(f.halo.assumes(t), assumed(t, shearBiasSetting, dilutionSetting, distanceScaleSetting, elongationSetting)...)
-	if f.offset.rayleigh > 0 {
-		lines = append(lines, fmt.Sprintf("miscentring: drawn from a Rayleigh distribution of scale %.4g kpc", f.offset.rayleigh))
+func (s *shearPart) state(best lens, fit *estimate.Fit) {
+	bins := s.profile.Bins
+	expected := make([]float64, len(bins))
+	s.predict(best, expected)
+	fit.Chi2 += s.measure.chi2(expected)
+	fit.Dof += len(bins)
+	cover(fit, bins[0].Inner, bins[len(bins)-1].Outer)
+	checks, warnings := s.profile.checks(expected)
+	fit.Checks, fit.Warnings = append(fit.Checks, checks...), append(fit.Warnings, warnings...)
+	fit.Assumes = append(fit.Assumes, s.assumes()...)
+}
+
+// assumes says in words what the shear rests on.
+func (s *shearPart) assumes() []string {
+	lines := assumed(s.task, shearBiasSetting, dilutionSetting)
+	if s.offset.rayleigh > 0 {
+		lines = append(lines, fmt.Sprintf("miscentring: drawn from a Rayleigh distribution of scale %.4g kpc", s.offset.rayleigh))
 	} else {
-		lines = append(lines, assumed(t, miscentringSetting)...)
+		lines = append(lines, assumed(s.task, miscentringSetting)...)
 	}
 	beta, weight := 0.0, 0.0
-	for _, b := range f.profile.Bins {
+	for _, b := range s.profile.Bins {
 		w := 1 / (b.Error() * b.Error())
 		beta, weight = beta+w*b.Beta, weight+w
 	}
 	lines = append(lines, fmt.Sprintf("sources: ⟨β⟩ = %.3f of a source at infinity", beta/weight))
-	if f.profile.Bins[0].Inner == f.profile.Bins[0].Outer {
+	if s.profile.Bins[0].Inner == s.profile.Bins[0].Outer {
 		lines = append(lines, "shear: taken at the quoted radii, which stand for bins of no width")
 	}
-	if f.profile.Covariance != nil {
+	if s.profile.Covariance != nil {
 		return append(lines, "errors: the covariance given with the profile")
 	}
 	return append(lines, "errors: shape noise alone; structure along the line of sight and the variety of haloes are left out")

@@ -42,12 +42,11 @@ var tangentialShear = estimate.Method{
 	},
 	Uses: []string{"profile"},
 	Run: func(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
-		p := new(Profile)
-		if err := p.UnmarshalBinary(t.Reduced["profile"]); err != nil {
-			return nil, t.Errorf("%w", err)
-		}
-		f, err := newShearFit(t, p)
+		f, err := newLensFit(t)
 		if err != nil {
+			return nil, err
+		}
+		if err := f.addShear(); err != nil {
 			return nil, err
 		}
 		return f.run(ctx)

@@ -302,16 +302,23 @@ func BenchmarkFitFourAssumptions(b *testing.B) {
 }
 
 func BenchmarkLikelihood(b *testing.B) {
-	p := reduced(b, shapeTask(b, curlew, curlew.Shapes(deep, rand.New(rand.NewPCG(1, 2)))))
-	task := &estimate.Task{Object: estimate.Object{Redshift: curlew.Redshift}, Cosmology: background(b), Settings: defaults(tangentialShear)}
-	f, err := newShearFit(task, p)
+	task := shapeTask(b, curlew, curlew.Shapes(deep, rand.New(rand.NewPCG(1, 2))))
+	data, err := reduced(b, task).MarshalBinary()
 	if err != nil {
 		b.Fatal(err)
 	}
-	out := make([]float64, len(p.Bins))
+	task.Settings, task.Reduced = defaults(tangentialShear), map[string][]byte{"profile": data}
+	f, err := newLensFit(task)
+	if err != nil {
+		b.Fatal(err)
+	}
+	if err := f.addShear(); err != nil {
+		b.Fatal(err)
+	}
+	likelihood := f.parts[0].likelihood()
 	b.ReportAllocs()
 	for b.Loop() {
-		f.predict([]float64{8e14, 0.1}, out)
-		f.measure.chi2(out)
+		l, _ := f.at([]float64{8e14, 0.1})
+		likelihood(l)
 	}
 }
