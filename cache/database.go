@@ -1,6 +1,7 @@
 package cache
 
 import (
+	"bytes"
 	"encoding/binary"
 	"errors"
 	"fmt"
@@ -104,7 +105,12 @@ func (s *Store) update(fn func(*bolt.Tx) error) error {
 
 // transact opens the database, runs one transaction and closes it again.
 func (s *Store) transact(readOnly bool, fn func(*bolt.Tx) error) error {
-	return guard(func() error {
+	err := guard(func() error {
+		if !s.sound.Load() {
+			if err := s.checkPages(); err != nil && !errors.Is(err, errAbsent) {
+				return err
+			}
+		}
 		db, err := s.open(readOnly)
 		if err != nil {
 			return err
@@ -125,6 +131,34 @@ func (s *Store) transact(readOnly bool, fn func(*bolt.Tx) error) error {
 			return fn(tx)
 		})
 	})
+	if isDamage(err) {
+		s.sound.Store(false)
+	}
+	return err
+}
+
+// checkPages makes sure that bbolt can be trusted with the database. Opening it
+// for reading looks at nothing but its first two pages.
+func (s *Store) checkPages() error {
+	db, err := s.open(true)
+	if err != nil {
+		return err
+	}
+	defer db.Close()
+	file, err := os.Open(s.database())
+	if err != nil {
+		return err
+	}
+	defer file.Close()
+	pages, err := newPageFile(file)
+	if err == nil {
+		err = pages.check()
+	}
+	if err != nil {
+		return &damageError{err.Error()}
+	}
+	s.sound.Store(true)
+	return nil
 }
 
 // guard turns what bbolt does on a damaged file, a panic or a fault on a mapped
@@ -247,21 +281,75 @@ func put(tx *bolt.Tx, bucket, key, value []byte) error {
 	return tx.Bucket(bucket).Put(key, seal(bucket, key, value))
 }
 
+// value checks an entry and gives a copy of its value. It must run under guard.
+func value(bucket, key, sealed []byte) ([]byte, error) {
+	v, err := unseal(bucket, key, sealed)
+	if err != nil {
+		return nil, &damageError{err.Error()}
+	}
+	return v, nil
+}
+
 // get reads a value, nil when there is none. The error is always a damageError.
-func get(tx *bolt.Tx, bucket, key []byte) (value []byte, err error) {
-	err = guard(func() error {
+func get(tx *bolt.Tx, bucket, key []byte) (v []byte, err error) {
+	err = guard(func() (err error) {
 		b := tx.Bucket(bucket)
 		if b == nil {
 			return nil
 		}
-		sealed := b.Get(key)
-		if sealed == nil {
+		if sealed := b.Get(key); sealed != nil {
+			v, err = value(bucket, key, sealed)
+		}
+		return err
+	})
+	return v, err
+}
+
+// scan calls each with every entry of a bucket, in the order of keys, reading
+// them in transactions short enough not to keep other processes waiting. An
+// entry that does not verify comes with a damageError; when pages cannot be read
+// the scan ends with one.
+func (s *Store) scan(bucket []byte, each func(key, value []byte, damage error) error) error {
+	type entry struct {
+		key, value []byte
+		damage     error
+	}
+	var next []byte
+	for {
+		var chunk []entry
+		err := s.view(func(tx *bolt.Tx) error {
+			b := tx.Bucket(bucket)
+			if b == nil {
+				return nil
+			}
+			size := 0
+			c := b.Cursor()
+			for key, sealed := c.Seek(next); key != nil && len(chunk) < 1000 && size < 4<<20; key, sealed = c.Next() {
+				v, err := value(bucket, key, sealed)
+				chunk = append(chunk, entry{bytes.Clone(key), v, err})
+				size += len(v)
+			}
+			return nil
+		})
+		for _, e := range chunk {
+			if e.damage != nil {
+				s.damaged.Store(true)
+			}
+			if err := each(e.key, e.value, e.damage); err != nil {
+				return err
+			}
+		}
+		switch {
+		case errors.Is(err, errAbsent):
+			return nil
+		case isDamage(err):
+			s.damaged.Store(true)
+			return err
+		case err != nil:
+			return err
+		case len(chunk) == 0:
 			return nil
 		}
-		if value, err = unseal(bucket, key, sealed); err != nil {
-			return &damageError{err.Error()}
-		}
-		return nil
-	})
-	return value, err
+		next = append(chunk[len(chunk)-1].key, 0)
+	}
 }

@@ -26,17 +26,9 @@ func (s *Store) Remember(w Weighing, body []byte) (number uint64, err error) {
 		return 0, fmt.Errorf("the weighing is not recorded: %w", err)
 	}
 	w.Body, w.Size = DigestOf(body), int64(len(body))
-	large := len(body) > largeOutput
-	if large {
-		if err := s.writeOutput(w.Body, body); err != nil {
-			return 0, fmt.Errorf("the weighing is not recorded: %w", s.failed(err))
-		}
-	}
-	err = s.commit(func(tx *bolt.Tx) error {
-		if !large {
-			if err := put(tx, outputBucket, w.Body[:], body); err != nil {
-				return err
-			}
+	err = s.store(w.Body, body, func(tx *bolt.Tx) error {
+		if err := s.putOutput(tx, w.Body, body); err != nil {
+			return err
 		}
 		number = 1
 		if key := lastOf(tx.Bucket(historyBucket), putString(nil, w.Recipe)); key != nil {
@@ -71,37 +63,23 @@ func lastOf(b *bolt.Bucket, prefix []byte) (last []byte) {
 // all recipes when recipe is "". Damaged entries are left out with a warning.
 func (s *Store) History(recipe string) ([]Weighing, error) {
 	var list []Weighing
-	err := s.View(func(r *Reader) error {
-		if r.tx == nil {
+	err := s.scan(historyBucket, func(key, value []byte, damage error) error {
+		if damage != nil {
+			s.warn("an entry in the history of weighings is damaged and left out")
 			return nil
 		}
-		return guard(func() error {
-			b := r.tx.Bucket(historyBucket)
-			if b == nil {
-				return nil
-			}
-			var prefix []byte
-			if recipe != "" {
-				prefix = putString(nil, recipe)
-			}
-			c := b.Cursor()
-			for key, sealed := c.Seek(prefix); key != nil && bytes.HasPrefix(key, prefix); key, sealed = c.Next() {
-				value, err := unseal(historyBucket, key, sealed)
-				if err != nil {
-					s.damaged.Store(true)
-					s.warn("an entry in the history of weighings is damaged and left out")
-					continue
-				}
-				w, err := decodeWeighing(key, value)
-				if err != nil {
-					s.warn("an entry in the history of weighings cannot be read (%v) and is left out", err)
-					continue
-				}
-				list = append(list, w)
-			}
-			return nil
-		})
+		w, err := decodeWeighing(key, value)
+		if err != nil {
+			s.warn("an entry in the history of weighings cannot be read (%v) and is left out", err)
+		} else if recipe == "" || w.Recipe == recipe {
+			list = append(list, w)
+		}
+		return nil
 	})
+	if isDamage(err) {
+		s.warn("part of the history of weighings cannot be read (%v)", err)
+		err = nil
+	}
 	return list, err
 }
 

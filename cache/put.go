@@ -21,10 +21,13 @@ var errGone = errors.New("the output was removed while it was being stored")
 func (s *Store) Put(r *Record, output []byte) {
 	r.Output, r.Size = DigestOf(output), int64(len(output))
 	if s.unwritable() == nil {
-		err := s.store(r, output)
-		for try := 0; try < 3 && errors.Is(err, errGone); try++ {
-			err = s.store(r, output)
-		}
+		now := s.o.Now()
+		err := s.store(r.Output, output, func(tx *bolt.Tx) error {
+			if err := s.putRecord(tx, r, output); err != nil {
+				return err
+			}
+			return use(tx, Use{r.Name, r.Key()}, now)
+		})
 		if err == nil {
 			return
 		}
@@ -36,31 +39,47 @@ func (s *Store) Put(r *Record, output []byte) {
 	s.outputs[r.Output] = bytes.Clone(output)
 }
 
-func (s *Store) store(r *Record, output []byte) error {
-	large := len(output) > largeOutput
-	if large {
-		if err := s.writeOutput(r.Output, output); err != nil {
+// store makes a large output a file before it commits what refers to it.
+func (s *Store) store(d Digest, output []byte, write func(*bolt.Tx) error) error {
+	for try := 1; ; try++ {
+		if len(output) > largeOutput {
+			if err := s.writeOutput(d, output); err != nil {
+				return err
+			}
+		}
+		err := s.commit(write)
+		if err == nil {
+			s.grown.Store(true)
+		}
+		if !errors.Is(err, errGone) || try == 3 {
 			return err
 		}
 	}
-	key, now := r.Key(), s.o.Now()
-	return s.commit(func(tx *bolt.Tx) error {
-		if large {
-			if s.outputSize(r.Output) != r.Size {
-				return errGone
-			}
-		} else if err := put(tx, outputBucket, r.Output[:], output); err != nil {
-			return err
-		}
-		if err := put(tx, recordBucket, key[:], r.Encode()); err != nil {
-			return err
-		}
-		seconds := binary.BigEndian.AppendUint64(nil, math.Float64bits(r.Seconds))
-		if err := put(tx, kindBucket, kindKey(r.Kind), seconds); err != nil {
-			return err
-		}
-		return use(tx, Use{r.Name, key}, now)
-	})
+}
+
+// putRecord writes a record and its output; a large output is a file already.
+func (s *Store) putRecord(tx *bolt.Tx, r *Record, output []byte) error {
+	if err := s.putOutput(tx, r.Output, output); err != nil {
+		return err
+	}
+	key := r.Key()
+	if err := put(tx, recordBucket, key[:], r.Encode()); err != nil {
+		return err
+	}
+	seconds := binary.BigEndian.AppendUint64(nil, math.Float64bits(r.Seconds))
+	return put(tx, kindBucket, kindKey(r.Kind), seconds)
+}
+
+// putOutput writes a small output, and sees that a large one has not been
+// trimmed away before anything referred to it.
+func (s *Store) putOutput(tx *bolt.Tx, d Digest, output []byte) error {
+	if len(output) <= largeOutput {
+		return put(tx, outputBucket, d[:], output)
+	}
+	if s.outputSize(d) != int64(len(output)) {
+		return errGone
+	}
+	return nil
 }
 
 // Use says that a node of a recipe uses a record.
@@ -90,7 +109,7 @@ func (s *Store) Touch(uses []Use) {
 }
 
 func use(tx *bolt.Tx, u Use, now time.Time) error {
-	if err := put(tx, usedBucket, u.Key[:], binary.BigEndian.AppendUint64(nil, uint64(now.Unix()))); err != nil {
+	if err := noteUse(tx, u.Key, now); err != nil {
 		return err
 	}
 	last, before := lastKeys(tx, u.Name)
@@ -101,6 +120,10 @@ func use(tx *bolt.Tx, u Use, now time.Time) error {
 		before = last
 	}
 	return put(tx, nameBucket, u.Name.bytes(), append(u.Key[:], before[:]...))
+}
+
+func noteUse(tx *bolt.Tx, k Key, now time.Time) error {
+	return put(tx, usedBucket, k[:], binary.BigEndian.AppendUint64(nil, uint64(now.Unix())))
 }
 
 // lastKeys gives the key that a name stood for last and the one before it, zero

@@ -31,7 +31,7 @@ import (
 // Options of a store; the zero value serves.
 type Options struct {
 	Limit int64            // size in bytes to which Close trims the store; 0 means no limit
-	Wait  time.Duration    // how long to wait for another process's transaction; 0 means 2 s
+	Wait  time.Duration    // how long to wait for another process's transaction; 0 means 5 s
 	Now   func() time.Time // the clock; nil means time.Now
 }
 
@@ -46,7 +46,9 @@ type Store struct {
 	stopped chan struct{} // closed when the writer has ended
 	once    sync.Once
 
+	sound   atomic.Bool // the database's pages were checked in this process
 	damaged atomic.Bool // some value in the database did not verify
+	grown   atomic.Bool // something was stored
 
 	mu       sync.Mutex // guards what follows
 	warnings []string
@@ -61,7 +63,7 @@ type Store struct {
 // with the folder is a warning and costs only what was stored.
 func Open(dir string, o Options) (*Store, error) {
 	if o.Wait == 0 {
-		o.Wait = 2 * time.Second
+		o.Wait = 5 * time.Second
 	}
 	if o.Now == nil {
 		o.Now = time.Now
@@ -91,12 +93,22 @@ func Open(dir string, o Options) (*Store, error) {
 // Dir is the store's folder.
 func (s *Store) Dir() string { return s.dir }
 
-// Close waits until everything queued is committed. The store must not be used
-// afterwards.
-func (s *Store) Close() error {
-	s.once.Do(func() { close(s.closing) })
-	<-s.stopped
-	return nil
+// Close waits until everything queued is committed, and trims the store to its
+// limit if this process has added to it. The store must not be used afterwards.
+func (s *Store) Close() (err error) {
+	s.once.Do(func() {
+		close(s.closing)
+		<-s.stopped
+		if s.o.Limit <= 0 || !s.grown.Load() {
+			return
+		}
+		size, sizeErr := s.bytes()
+		if err = sizeErr; err == nil && size > s.o.Limit {
+			// A tenth less, so that the next small run need not trim again.
+			_, err = s.Trim(Trim{Bytes: s.o.Limit - s.o.Limit/10})
+		}
+	})
+	return err
 }
 
 // Warnings gives what went wrong since it was last asked, each problem once.

@@ -90,6 +90,8 @@ func (s *Store) commitAll(batch []*commit) {
 func (s *Store) failed(err error) error {
 	var busy *busyError
 	switch {
+	case errors.Is(err, errGone), errors.Is(err, errClosed):
+		return err
 	case errors.As(err, &busy):
 		s.warn("%v; what was computed meanwhile is kept in memory only", err)
 		return err

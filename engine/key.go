@@ -1,8 +1,9 @@
 package engine
 
 import (
+	"encoding/hex"
 	"fmt"
-	"strings"
+	"strconv"
 
 	"steelyard/cache"
 )
@@ -17,19 +18,18 @@ const keyFormat = 1
 // their content and their place in the node's lists, not by their names: a node
 // that puts a name into its output must have that name among its Params.
 func transcript(n *Node, arithmetic string, inputs, files []cache.Digest) string {
-	var b strings.Builder
-	fmt.Fprintf(&b, "steelyard key %d\n", keyFormat)
-	fmt.Fprintf(&b, "kind %q\n", n.Kind)
-	fmt.Fprintf(&b, "version %d\n", n.Version)
-	fmt.Fprintf(&b, "arithmetic %q\n", arithmetic)
+	b := fmt.Appendf(make([]byte, 0, 512), "steelyard key %d\n", keyFormat)
+	b = append(strconv.AppendQuote(append(b, "kind "...), n.Kind), '\n')
+	b = append(strconv.AppendInt(append(b, "version "...), int64(n.Version), 10), '\n')
+	b = append(strconv.AppendQuote(append(b, "arithmetic "...), arithmetic), '\n')
 	for _, p := range n.Params {
-		fmt.Fprintf(&b, "param %q\n", p)
+		b = append(strconv.AppendQuote(append(b, "param "...), p), '\n')
 	}
 	for _, d := range inputs {
-		fmt.Fprintf(&b, "input %s\n", d)
+		b = append(hex.AppendEncode(append(b, "input "...), d[:]), '\n')
 	}
 	for _, d := range files {
-		fmt.Fprintf(&b, "file %s\n", d)
+		b = append(hex.AppendEncode(append(b, "file "...), d[:]), '\n')
 	}
-	return b.String()
+	return string(b)
 }

@@ -1,0 +1,393 @@
+package cache
+
+import (
+	"bytes"
+	"encoding/binary"
+	"errors"
+	"fmt"
+	"hash/fnv"
+	"math"
+	"os"
+)
+
+// bbolt trusts the pages of its file: it follows page numbers, lengths and
+// offsets through unsafe pointers, and a changed byte among them can end the
+// program beyond any recovery. So this file reads the pages by itself, checking
+// every number against its bounds: once before bbolt may open a database in
+// this process, and to save what can be saved of a damaged one.
+//
+// The layout, in the machine's byte order: a page begins with its number (8
+// bytes), kind (2), number of elements (2) and how many pages it goes on for
+// (4). The first two pages are metas, of which the newer valid one counts.
+// Elements of leaves are flags, position, key length and value length, those of
+// branches position, key length (4 each) and page number (8); a position counts
+// from its element. The value of a bucket's element is the page number of its
+// root (8) and a sequence (8), and with page number 0 a whole leaf follows.
+
+const (
+	branchPage = 0x01
+	leafPage   = 0x02
+	freePage   = 0x10
+
+	pageHeader    = 16
+	elementSize   = 16
+	bucketHeader  = 16
+	bucketElement = 0x01
+	noFreeList    = math.MaxUint64
+
+	metaSize      = 64
+	metaMagic     = 0xED0CDAED
+	metaVersion   = 2
+	maxNodeLength = 64 << 20 // more than any value of ours
+)
+
+var native = binary.NativeEndian
+
+// pageFile is a bbolt file read page by page.
+type pageFile struct {
+	file     *os.File
+	size     int    // of a page
+	pages    uint64 // in use
+	root     uint64 // page of the bucket of buckets
+	freeList uint64
+	reached  []bool // pages found in use so far
+}
+
+// meta is what counts of a meta page.
+type meta struct {
+	pageSize uint32
+	root     uint64
+	freeList uint64
+	pages    uint64
+	txid     uint64
+}
+
+func parseMeta(page []byte) (m meta, ok bool) {
+	b := page[pageHeader:]
+	sum := fnv.New64a()
+	sum.Write(b[:metaSize-8])
+	if native.Uint32(b) != metaMagic || native.Uint32(b[4:]) != metaVersion || native.Uint64(b[metaSize-8:]) != sum.Sum64() {
+		return m, false
+	}
+	return meta{native.Uint32(b[8:]), native.Uint64(b[16:]), native.Uint64(b[32:]), native.Uint64(b[40:]), native.Uint64(b[48:])}, true
+}
+
+// newPageFile reads the metas of a file. Of a file that carries none it gives
+// what lies in it, page after page, with an error.
+func newPageFile(file *os.File) (*pageFile, error) {
+	info, err := file.Stat()
+	if err != nil {
+		return nil, err
+	}
+	p := &pageFile{file: file, size: os.Getpagesize()}
+	var best meta
+	first := make([]byte, pageHeader+metaSize)
+	if _, err := file.ReadAt(first, 0); err == nil {
+		if m, ok := parseMeta(first); ok && m.pageSize >= 512 && m.pageSize <= 1<<20 {
+			best, p.size = m, int(m.pageSize)
+		}
+	}
+	second := make([]byte, pageHeader+metaSize)
+	if _, err := file.ReadAt(second, int64(p.size)); err == nil {
+		if m, ok := parseMeta(second); ok && int(m.pageSize) == p.size && m.txid >= best.txid {
+			best = m
+		}
+	}
+	p.root, p.freeList, p.pages = best.root, best.freeList, uint64(info.Size())/uint64(p.size)
+	switch {
+	case best.pageSize == 0:
+		err = errors.New("its first pages are damaged")
+	case best.pages > p.pages:
+		err = fmt.Errorf("it is cut short: %d bytes are there of %d", info.Size(), best.pages*uint64(p.size))
+	default:
+		p.pages = best.pages
+	}
+	p.reached = make([]bool, p.pages)
+	return p, err
+}
+
+// node is a branch or a leaf.
+type node struct {
+	id       uint64
+	kind     uint16
+	elements []element
+}
+
+type element struct {
+	flags      uint32
+	key, value []byte
+	child      uint64 // page of a branch's element
+}
+
+// read reads a page and those it goes on for, without believing its elements.
+func (p *pageFile) read(id uint64) (page []byte, err error) {
+	page = make([]byte, p.size)
+	if _, err := p.file.ReadAt(page, int64(id)*int64(p.size)); err != nil {
+		return nil, fmt.Errorf("page %d: %w", id, err)
+	}
+	more := uint64(native.Uint32(page[12:]))
+	if native.Uint64(page) != id {
+		return nil, fmt.Errorf("page %d carries another number", id)
+	}
+	if id+more >= p.pages || more*uint64(p.size) > maxNodeLength {
+		return nil, fmt.Errorf("page %d reaches beyond the end", id)
+	}
+	if more > 0 {
+		rest := make([]byte, int(more)*p.size)
+		if _, err := p.file.ReadAt(rest, int64(id+1)*int64(p.size)); err != nil {
+			return nil, fmt.Errorf("page %d: %w", id, err)
+		}
+		page = append(page, rest...)
+	}
+	return page, nil
+}
+
+// parse reads the elements of a page. Those out of bounds are left out and make
+// an error.
+func parse(page []byte) (n node, err error) {
+	n = node{id: native.Uint64(page), kind: native.Uint16(page[8:])}
+	count := int(native.Uint16(page[10:]))
+	if n.kind != leafPage && n.kind != branchPage {
+		return n, fmt.Errorf("page %d is neither a leaf nor a branch", n.id)
+	}
+	if end := pageHeader + count*elementSize; end > len(page) {
+		return n, fmt.Errorf("page %d has more elements than fit", n.id)
+	}
+	for i := range count {
+		at := pageHeader + i*elementSize
+		word := func(k int) uint64 { return uint64(native.Uint32(page[at+4*k:])) }
+		var e element
+		var start, keyEnd, end uint64
+		if n.kind == leafPage {
+			e.flags = uint32(word(0))
+			start = uint64(at) + word(1)
+			keyEnd = start + word(2)
+			end = keyEnd + word(3)
+		} else {
+			e.child = native.Uint64(page[at+8:])
+			start = uint64(at) + word(0)
+			keyEnd = start + word(1)
+			end = keyEnd
+		}
+		if start < uint64(pageHeader+count*elementSize) || end > uint64(len(page)) {
+			err = fmt.Errorf("page %d has an element outside it", n.id)
+			continue
+		}
+		e.key, e.value = page[start:keyEnd], page[keyEnd:end]
+		n.elements = append(n.elements, e)
+	}
+	return n, err
+}
+
+// check verifies that bbolt can be trusted with the file: all pages that can be
+// reached form trees of buckets in the order of their keys, and no free page is
+// among them.
+func (p *pageFile) check() error {
+	err := p.walk(p.root, nil, nil, 0, func(e element) error {
+		if e.flags != bucketElement || len(e.value) < bucketHeader {
+			return fmt.Errorf("the list of buckets is damaged")
+		}
+		if root := native.Uint64(e.value); root != 0 {
+			return p.walk(root, nil, nil, 0, plain)
+		}
+		n, err := inline(e)
+		if err != nil {
+			return err
+		}
+		if err := n.ordered(nil, nil); err != nil {
+			return err
+		}
+		return n.each(plain)
+	})
+	if err != nil {
+		return err
+	}
+	return p.checkFree()
+}
+
+// plain accepts an element that is not a bucket.
+func plain(e element) error {
+	if e.flags != 0 {
+		return fmt.Errorf("an entry has unknown flags")
+	}
+	return nil
+}
+
+// inline is the leaf within the element of a small bucket.
+func inline(e element) (node, error) {
+	if len(e.value) < bucketHeader+pageHeader {
+		return node{}, fmt.Errorf("the bucket %q is cut short", e.key)
+	}
+	n, err := parse(e.value[bucketHeader:])
+	if err == nil && n.kind != leafPage {
+		err = fmt.Errorf("the bucket %q holds no leaf", e.key)
+	}
+	return n, err
+}
+
+// maxDepth is more than a tree in a file of any size needs.
+const maxDepth = 64
+
+// walk visits the elements of the leaves of a tree whose keys lie from low to
+// before high.
+func (p *pageFile) walk(id uint64, low, high []byte, depth int, visit func(element) error) error {
+	if id < 2 || id >= p.pages || depth > maxDepth {
+		return fmt.Errorf("page %d cannot be part of a bucket", id)
+	}
+	page, err := p.read(id)
+	if err != nil {
+		return err
+	}
+	if err := p.reach(id, len(page)/p.size); err != nil {
+		return err
+	}
+	n, err := parse(page)
+	if err != nil {
+		return err
+	}
+	if err := n.ordered(low, high); err != nil {
+		return err
+	}
+	if n.kind == leafPage {
+		return n.each(visit)
+	}
+	if len(n.elements) == 0 {
+		return fmt.Errorf("page %d is an empty branch", id)
+	}
+	for i, e := range n.elements {
+		from, to := low, high
+		if i > 0 {
+			from = e.key
+		}
+		if i+1 < len(n.elements) {
+			to = n.elements[i+1].key
+		}
+		if err := p.walk(e.child, from, to, depth+1, visit); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// reach marks pages as in use, each once.
+func (p *pageFile) reach(id uint64, count int) error {
+	for i := range uint64(count) {
+		if p.reached[id+i] {
+			return fmt.Errorf("page %d is used twice", id+i)
+		}
+		p.reached[id+i] = true
+	}
+	return nil
+}
+
+// ordered makes sure that keys ascend, from low to before high.
+func (n *node) ordered(low, high []byte) error {
+	for i, e := range n.elements {
+		if i > 0 && bytes.Compare(n.elements[i-1].key, e.key) >= 0 ||
+			low != nil && bytes.Compare(e.key, low) < 0 || high != nil && bytes.Compare(e.key, high) >= 0 {
+			return fmt.Errorf("page %d has keys out of order", n.id)
+		}
+	}
+	return nil
+}
+
+func (n *node) each(visit func(element) error) error {
+	for _, e := range n.elements {
+		if err := visit(e); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// checkFree makes sure that nothing in use is listed as free.
+func (p *pageFile) checkFree() error {
+	if p.freeList == noFreeList {
+		return nil
+	}
+	if p.freeList < 2 || p.freeList >= p.pages {
+		return fmt.Errorf("its list of free pages is lost")
+	}
+	page, err := p.read(p.freeList)
+	if err != nil {
+		return err
+	}
+	if native.Uint16(page[8:]) != freePage {
+		return fmt.Errorf("its list of free pages is damaged")
+	}
+	if err := p.reach(p.freeList, len(page)/p.size); err != nil {
+		return err
+	}
+	ids := page[pageHeader:]
+	count := uint64(native.Uint16(page[10:]))
+	if count == 0xffff { // the number did not fit
+		count = native.Uint64(ids)
+		ids = ids[8:]
+	}
+	if count > uint64(len(ids)/8) {
+		return fmt.Errorf("its list of free pages is damaged")
+	}
+	for i := range count {
+		id := native.Uint64(ids[8*i:])
+		if id < 2 || id >= p.pages {
+			return fmt.Errorf("its list of free pages is damaged")
+		}
+		if err := p.reach(id, 1); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// entries visits every element that looks like an entry of a bucket, whatever
+// else is wrong with the file: first those on pages that belong to the tree,
+// then those on all others, among them older states.
+func (p *pageFile) entries(visit func(key, value []byte) error) error {
+	p.reached = make([]bool, p.pages)
+	p.follow(p.root, 0)
+	for _, live := range []bool{true, false} {
+		for id := uint64(2); id < p.pages; id++ {
+			if p.reached[id] != live {
+				continue
+			}
+			page, err := p.read(id)
+			if err != nil || native.Uint16(page[8:]) != leafPage {
+				continue
+			}
+			n, _ := parse(page) // without its damaged elements
+			for _, e := range n.elements {
+				leaf := node{elements: []element{e}}
+				if e.flags == bucketElement {
+					leaf, _ = inline(e)
+				}
+				for _, e := range leaf.elements {
+					if err := visit(e.key, e.value); err != nil {
+						return err
+					}
+				}
+			}
+		}
+	}
+	return nil
+}
+
+// follow marks what can be reached of a tree with damage in it.
+func (p *pageFile) follow(id uint64, depth int) {
+	if id < 2 || id >= p.pages || depth > maxDepth || p.reached[id] {
+		return
+	}
+	page, err := p.read(id)
+	if err != nil {
+		return
+	}
+	p.reached[id] = true
+	n, _ := parse(page)
+	for _, e := range n.elements {
+		switch {
+		case n.kind == branchPage:
+			p.follow(e.child, depth+1)
+		case e.flags == bucketElement && len(e.value) >= bucketHeader:
+			p.follow(native.Uint64(e.value), depth+1)
+		}
+	}
+}
