@@ -62,7 +62,7 @@ func (c *compiler) compile(e hclsyntax.Expression) expression {
 		if e.Val.IsKnown() && !e.Val.IsNull() && e.Val.Type() == cty.Number {
 			x, _ := e.Val.AsBigFloat().Float64()
 			if x-x != 0 {
-				return c.fail(e.SrcRange, "this number is too large to compute with", "")
+				return c.fail(e.SrcRange, "this number is too large to compute with", "Write it smaller; numbers end at 1.8e308.")
 			}
 			return expression{kind: numberExpression, at: e.SrcRange, number: func(row) (float64, error) { return x, nil }}
 		}
@@ -70,7 +70,7 @@ func (c *compiler) compile(e hclsyntax.Expression) expression {
 	case *hclsyntax.TemplateExpr:
 		text, ok := plainTemplate(e)
 		if !ok {
-			return c.fail(e.SrcRange, "a text is taken as it stands: ${…} has no meaning in it", "")
+			return c.fail(e.SrcRange, "a text is taken as it stands: ${…} has no meaning in it", "Write the text out.")
 		}
 		return expression{kind: textExpression, at: e.SrcRange, text: text}
 	case *hclsyntax.ScopeTraversalExpr:
@@ -87,7 +87,7 @@ func (c *compiler) compile(e hclsyntax.Expression) expression {
 	case *hclsyntax.BinaryOpExpr:
 		return c.binary(e)
 	}
-	return c.fail(e.Range(), "this is not understood in a condition", "A condition is made of columns, numbers, comparisons (== != < <= > >=), + - * /, && || ! and parentheses.")
+	return c.fail(e.Range(), "this is not understood in a condition", operators)
 }
 
 // plainTemplate returns the text of a template without anything to be filled
@@ -137,7 +137,7 @@ func (c *compiler) unary(e *hclsyntax.UnaryOpExpr) expression {
 		}
 		return expression{kind: conditionExpression, at: e.SrcRange, condition: opposite(x.condition)}
 	case !x.numeric():
-		return c.fail(e.SrcRange, fmt.Sprintf("a sign stands before a number, and this is %s", x.describe()), "")
+		return c.fail(e.SrcRange, fmt.Sprintf("a sign stands before a number, and this is %s", x.describe()), "Write it before a number or the name of a column.")
 	}
 	return expression{kind: numberExpression, at: e.SrcRange, number: negate(x.number)}
 }
@@ -178,14 +178,14 @@ func (c *compiler) binary(e *hclsyntax.BinaryOpExpr) expression {
 	if f, ok := calculations[e.Op]; ok {
 		for _, x := range []expression{a, b} {
 			if !x.numeric() {
-				return c.fail(x.at, fmt.Sprintf("numbers can be computed with, and this is %s", x.describe()), "")
+				return c.fail(x.at, fmt.Sprintf("numbers can be computed with, and this is %s", x.describe()), "Write a number without quotes, or the name of a column.")
 			}
 		}
 		return expression{kind: numberExpression, at: e.SrcRange, number: calculate(a.number, b.number, f)}
 	}
 	holds, ok := comparisons[e.Op]
 	if !ok {
-		return c.fail(e.SrcRange, "this is not understood in a condition", "")
+		return c.fail(e.SrcRange, "this is not understood in a condition", operators)
 	}
 	for _, x := range []expression{a, b} {
 		if x.kind == conditionExpression {
@@ -211,7 +211,7 @@ func (c *compiler) compareText(e *hclsyntax.BinaryOpExpr, a, b expression, holds
 		column, text = b, a
 	}
 	if column.kind != columnExpression {
-		return c.fail(text.at, fmt.Sprintf("a text is compared with a column, and beside it stands %s", column.describe()), "")
+		return c.fail(text.at, fmt.Sprintf("a text is compared with a column, and beside it stands %s", column.describe()), "Write the name of the column alone on the other side.")
 	}
 	name := c.p.names[column.column]
 	if e.Op == hclsyntax.OpEqual || e.Op == hclsyntax.OpNotEqual {
@@ -242,7 +242,7 @@ func (c *compiler) compareText(e *hclsyntax.BinaryOpExpr, a, b expression, holds
 			}
 			limitFor.unit, limitFor.apart = named.Unit, apart(u, q.Unit)
 			if !limitFor.apart && !units.SameDimension(u, q.Unit) {
-				return c.fail(text.at, fmt.Sprintf("%s is in %s, and this is %s", name, named.Unit, withArticle(q.Unit.Describe())), "")
+				return c.fail(text.at, fmt.Sprintf("%s is in %s, and this is %s", name, named.Unit, withArticle(q.Unit.Describe())), fmt.Sprintf("Write a quantity in %s, or in a unit of the same kind.", named.Unit))
 			}
 		}
 	}

@@ -8,6 +8,9 @@ import (
 	"github.com/hashicorp/hcl/v2"
 )
 
+// maxDiagnostics bounds what is said about a file that is no recipe at all.
+const maxDiagnostics = 200
+
 // problem is a mistake as the checks report it.
 type problem struct {
 	at      hcl.Range // Filename alone for a file without a place to point at
@@ -73,11 +76,19 @@ func (r *report) diagnostics() Diagnostics {
 	}
 	sort.SliceStable(kept, func(i, j int) bool { return r.before(kept[i], kept[j]) })
 	ds := make(Diagnostics, 0, len(kept))
+	more := 0
 	for i, p := range kept {
-		if i > 0 && p == kept[i-1] {
-			continue
+		switch {
+		case i > 0 && p == kept[i-1]:
+		case len(ds) >= maxDiagnostics:
+			more++
+		default:
+			ds = append(ds, r.diagnostic(p))
 		}
-		ds = append(ds, r.diagnostic(p))
+	}
+	if more > 0 {
+		last := hcl.Range{Filename: kept[len(kept)-1].at.Filename}
+		ds = append(ds, r.diagnostic(problem{at: last, what: fmt.Sprintf("%d more mistakes are not shown", more)}))
 	}
 	return ds
 }

@@ -47,6 +47,9 @@ func (l *loader) predicate(t term, columns []Column) *Predicate {
 	return bound
 }
 
+// operators says what a condition is made of.
+const operators = "A condition is made of columns, numbers, comparisons (== != < <= > >=), + - * /, && || ! and parentheses."
+
 // compiler compiles one condition.
 type compiler struct {
 	*loader
@@ -97,7 +100,10 @@ func (c *compiler) parse() hclsyntax.Expression {
 		if d.Severity != hcl.DiagError {
 			continue
 		}
-		what, _, _ := c.plainly(d)
+		what, _, write := plainly(d, source)
+		if !strings.HasPrefix(write, "Write 0.") {
+			write = operators
+		}
 		if strings.HasPrefix(d.Summary, "Extra characters") {
 			what = "this was not expected here"
 		}
@@ -105,7 +111,7 @@ func (c *compiler) parse() hclsyntax.Expression {
 		if d.Subject != nil {
 			at = *d.Subject
 		}
-		c.fail(at, what, "A condition is made of columns, numbers, comparisons (== != < <= > >=), + - * /, && || ! and parentheses.")
+		c.fail(at, what, write)
 		return nil
 	}
 	return e

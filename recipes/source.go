@@ -17,9 +17,10 @@ import (
 // Bounds on what is taken for a recipe: parsing recurses as deep as a file
 // nests, and a data file given by mistake must not fill the memory.
 const (
-	maxRecipeBytes = 1 << 20
+	maxRecipeBytes = 1 << 18
 	maxNesting     = 50  // of brackets and braces
 	maxOperators   = 200 // in one expression
+	maxHeredocs    = 100 // texts of several lines, which take the lexer the square of their number
 )
 
 // source is one file of a recipe.
@@ -52,7 +53,7 @@ func (r *report) readSource(name string, from *hcl.Range) *source {
 	case errors.As(err, &path):
 		return refer(fmt.Sprintf("the file %s cannot be read: %v", name, path.Err), "", "")
 	case err != nil:
-		return refer(fmt.Sprintf("%s %v", name, err), "A recipe is a text file of at most 1 MiB that names its data files.", "")
+		return refer(fmt.Sprintf("%s %v", name, err), "A recipe is a text file of at most 256 KiB that names its data files.", "")
 	}
 	content = bytes.TrimPrefix(content, []byte("\ufeff"))
 	if i := badText(content); i >= 0 {
@@ -110,11 +111,14 @@ func badText(content []byte) int {
 // shallow reports whether the parser can take the text without nesting too
 // deep, and says so otherwise.
 func (r *report) shallow(name string, content []byte) bool {
-	tokens, _ := hclsyntax.LexConfig(content, name, hcl.InitialPos)
-	at, ok := tooDeep(tokens)
+	at, ok := hcl.Range{Filename: name}, false
+	if bytes.Count(content, []byte("<<")) <= maxHeredocs {
+		tokens, _ := hclsyntax.LexConfig(content, name, hcl.InitialPos)
+		at, ok = tooDeep(tokens)
+	}
 	if !ok {
 		r.damaged, r.broken[name] = true, true
-		r.add(problem{at: at, syntax: true, what: "this is nested too deep for a recipe"})
+		r.add(problem{at: at, syntax: true, what: "this is nested too deep to be a recipe"})
 	}
 	return ok
 }

@@ -23,7 +23,11 @@ func (r *report) syntax(file string, diags hcl.Diagnostics) {
 			p.at = *d.Subject
 			p.at.Filename = file
 		}
-		p.what, p.why, p.write = r.plainly(d)
+		line := ""
+		if t := r.texts[file]; t != nil && p.at.Start.Line > 0 {
+			line = t.line(p.at.Start.Line)
+		}
+		p.what, p.why, p.write = plainly(d, line)
 		r.damaged = true
 		for _, word := range []string{"Unclosed", "Unbalanced", "Unterminated", "multi-line"} {
 			if strings.Contains(d.Summary, word) {
@@ -40,8 +44,9 @@ func (r *report) syntax(file string, diags hcl.Diagnostics) {
 	}
 }
 
-// plainly words a message of the parser for observers.
-func (r *report) plainly(d *hcl.Diagnostic) (what, why, write string) {
+// plainly words a message of the parser, about something in the line, for
+// observers.
+func plainly(d *hcl.Diagnostic, line string) (what, why, write string) {
 	switch d.Summary {
 	case "Argument or block definition required", "Argument definition required":
 		return "this is neither a setting nor a block", "", "Write `name = value`, or `name { … }` over several lines."
@@ -65,10 +70,8 @@ func (r *report) plainly(d *hcl.Diagnostic) (what, why, write string) {
 	case "Missing newline after block definition":
 		return "something follows behind the closing brace", "", "Begin a new line behind }."
 	case "Invalid expression", "Missing expression":
-		if d.Subject != nil {
-			if text := r.texts[d.Subject.Filename].line(d.Subject.Start.Line); leadingPoint.MatchString(text) {
-				return "a number begins with a digit", "", "Write 0" + leadingPoint.FindStringSubmatch(text)[1] + "."
-			}
+		if number := leadingPoint.FindStringSubmatch(line); number != nil {
+			return "a number begins with a digit", "", "Write 0" + number[1] + "."
 		}
 		return "a value is missing or cannot be read here", "", "Write a number, a text in quotes, a function such as normal(0, 0.1), a reference such as nuisance.name, or a list in brackets."
 	case "Invalid multi-line string", "Unterminated string literal", "Unterminated template string":
@@ -84,7 +87,7 @@ func (r *report) plainly(d *hcl.Diagnostic) (what, why, write string) {
 }
 
 // leadingPoint finds a number without its zero, as in "x = .5".
-var leadingPoint = regexp.MustCompile(`=\s*-?(\.\d+)`)
+var leadingPoint = regexp.MustCompile(`[=<>(,]\s*-?(\.\d+)`)
 
 // firstPlace finds the place in "…was already set at FILE:LINE,COL-COL. Each…".
 func firstPlace(detail string) string {
