@@ -1,0 +1,57 @@
+package main
+
+import (
+	"context"
+	"io"
+	"os"
+	"os/exec"
+	"path/filepath"
+	"testing"
+)
+
+// asProgram makes the test binary behave as the program itself, so that a
+// benchmark can start a process of it.
+const asProgram = "STEELYARD_TEST_AS_PROGRAM"
+
+func TestMain(m *testing.M) {
+	if os.Getenv(asProgram) != "" {
+		os.Exit(run(context.Background(), os.Args[1:], os.Stdout, os.Stderr))
+	}
+	os.Exit(m.Run())
+}
+
+func benchmarkWeigh(b *testing.B, store func() string) {
+	b.Helper()
+	recipe := filepath.Join(example, "recipe.hcl")
+	for b.Loop() {
+		if status := run(context.Background(), []string{"weigh", "--quiet", "--cache", store(), recipe}, io.Discard, io.Discard); status != exitDone {
+			b.Fatalf("exit status %d", status)
+		}
+	}
+}
+
+// BenchmarkExampleFromNothing weighs the example into an empty store.
+func BenchmarkExampleFromNothing(b *testing.B) {
+	benchmarkWeigh(b, b.TempDir)
+}
+
+// BenchmarkExampleUnchanged weighs the example again, within one process.
+func BenchmarkExampleUnchanged(b *testing.B) {
+	store := b.TempDir()
+	run(context.Background(), []string{"weigh", "--quiet", "--cache", store, filepath.Join(example, "recipe.hcl")}, io.Discard, io.Discard)
+	benchmarkWeigh(b, func() string { return store })
+}
+
+// BenchmarkExampleUnchangedProcess weighs the example again, process start
+// included.
+func BenchmarkExampleUnchangedProcess(b *testing.B) {
+	store, recipe := b.TempDir(), filepath.Join(example, "recipe.hcl")
+	run(context.Background(), []string{"weigh", "--quiet", "--cache", store, recipe}, io.Discard, io.Discard)
+	for b.Loop() {
+		cmd := exec.Command(os.Args[0], "weigh", "--quiet", "--cache", store, recipe)
+		cmd.Env = append(os.Environ(), asProgram+"=1")
+		if err := cmd.Run(); err != nil {
+			b.Fatal(err)
+		}
+	}
+}

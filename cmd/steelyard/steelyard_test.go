@@ -1,0 +1,288 @@
+package main
+
+import (
+	"bytes"
+	"context"
+	"encoding/json"
+	"io/fs"
+	"math"
+	"os"
+	"path/filepath"
+	"strings"
+	"testing"
+	"time"
+
+	"steelyard/engine/weighing"
+)
+
+const example = "../../recipes/examples/curlew"
+
+// steelyard runs the program as a user would.
+func steelyard(t *testing.T, args ...string) (status int, stdout, stderr string) {
+	t.Helper()
+	var out, err bytes.Buffer
+	status = run(context.Background(), args, &out, &err)
+	return status, out.String(), err.String()
+}
+
+// succeed runs the program and fails the test unless it exits with 0.
+func succeed(t *testing.T, args ...string) (stdout, stderr string) {
+	t.Helper()
+	status, stdout, stderr := steelyard(t, args...)
+	if status != exitDone {
+		t.Fatalf("steelyard %s: exit status %d\n%s%s", strings.Join(args, " "), status, stdout, stderr)
+	}
+	return stdout, stderr
+}
+
+// curlew copies the example, with fewer draws to be quick, and returns its
+// recipe.
+func curlew(t *testing.T) string {
+	t.Helper()
+	dir := t.TempDir()
+	if err := os.CopyFS(dir, os.DirFS(example)); err != nil {
+		t.Fatal(err)
+	}
+	recipe := filepath.Join(dir, "recipe.hcl")
+	edit(t, recipe, "draws = 4000", "draws = 500")
+	return recipe
+}
+
+// edit replaces a text that a file must have.
+func edit(t *testing.T, file, from, to string) {
+	t.Helper()
+	b, err := os.ReadFile(file)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if !bytes.Contains(b, []byte(from)) {
+		t.Fatalf("%s does not have %q", file, from)
+	}
+	if err := os.WriteFile(file, bytes.Replace(b, []byte(from), []byte(to), 1), 0o644); err != nil {
+		t.Fatal(err)
+	}
+}
+
+// weighed runs weigh --json on one recipe.
+func weighed(t *testing.T, args ...string) *weighing.Weighing {
+	t.Helper()
+	out, _ := succeed(t, append([]string{"weigh", "--json", "--quiet"}, args...)...)
+	var w weighing.Weighing
+	if err := json.Unmarshal([]byte(out), &w); err != nil {
+		t.Fatalf("%v in %q", err, out)
+	}
+	return &w
+}
+
+// computed lists the nodes that were computed.
+func computed(w *weighing.Weighing) []string {
+	var ids []string
+	for _, n := range w.Nodes {
+		if n.State != "reused" {
+			ids = append(ids, n.ID+" "+n.State)
+		}
+	}
+	return ids
+}
+
+// The masses of the example agree with the truth its data were made from: the
+// compared estimates within 2.6 standard deviations of ln M, which one in a
+// hundred misses by chance.
+func TestExampleAgreesWithItsTruth(t *testing.T) {
+	b, err := os.ReadFile(filepath.Join(example, "truth.json"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	var truth struct {
+		Masses []struct{ Overdensity, Mass float64 }
+	}
+	if err := json.Unmarshal(b, &truth); err != nil {
+		t.Fatal(err)
+	}
+	w := weighed(t, "--cache", t.TempDir(), filepath.Join(example, "recipe.hcl"))
+	checked := 0
+	for _, e := range w.Estimates {
+		if e.Name == "reported.earlier_shear" {
+			continue // a value invented apart from the data
+		}
+		for _, own := range e.Own {
+			for _, m := range truth.Masses {
+				if m.Overdensity != own.Overdensity || own.Of != "critical" {
+					continue
+				}
+				checked++
+				off := math.Log(own.Mass.Median / m.Mass)
+				sd := math.Log(own.Mass.Hi/own.Mass.Lo) / 2
+				if math.Abs(off) > 2.6*sd {
+					t.Errorf("%s: M_%g is off by %.2f in ln M, %.1f of its errors", e.Name, own.Overdensity, off, off/sd)
+				}
+			}
+		}
+	}
+	if checked != 12 {
+		t.Errorf("%d masses were checked, want three of four estimates", checked)
+	}
+	for _, c := range w.Consistency {
+		if c.Verdict != "consistent" {
+			t.Errorf("data of one halo are %s at %s", c.Verdict, c.At)
+		}
+	}
+}
+
+// A second weighing computes nothing and prints the same, and neither a comment,
+// a touched file, another spelling of a unit nor another number of workers
+// changes that.
+func TestNothingIsComputedTwice(t *testing.T) {
+	recipe, store := curlew(t), t.TempDir()
+	first, log := succeed(t, "weigh", "--cache", store, "--workers", "1", recipe)
+	if !strings.Contains(log, " computed") || strings.Contains(log, "reused") {
+		t.Errorf("the first weighing did not compute everything: %s", log)
+	}
+	for name, change := range map[string]func(){
+		"nothing":           func() {},
+		"a comment":         func() { edit(t, recipe, "lensing \"shapes\"", "# another comment\nlensing \"shapes\"") },
+		"a unit's spelling": func() { edit(t, recipe, `"0.25 Mpc"`, `"250 kpc"`) },
+		"a touched file": func() {
+			now := time.Now()
+			if err := os.Chtimes(filepath.Join(filepath.Dir(recipe), "shapes.fits"), now, now); err != nil {
+				t.Fatal(err)
+			}
+		},
+	} {
+		change()
+		again, log := succeed(t, "weigh", "--cache", store, "--workers", "8", recipe)
+		if strings.Contains(log, "computed") {
+			t.Errorf("after %s: %s", name, log)
+		}
+		if again != first {
+			t.Errorf("after %s the output differs", name)
+		}
+	}
+	fresh, _ := succeed(t, "weigh", "--cache", t.TempDir(), "--workers", "8", recipe)
+	if fresh != first {
+		t.Error("eight workers give other digits than one")
+	}
+}
+
+// One changed temperature costs the X-ray nodes and the comparison, nothing
+// else.
+func TestOnlyWhatDependsIsComputed(t *testing.T) {
+	recipe, store := curlew(t), t.TempDir()
+	weighed(t, "--cache", store, recipe)
+	edit(t, filepath.Join(filepath.Dir(recipe), "temperature.csv"), "1.1,1.6,6.835", "1.1,1.6,6.935")
+	w := weighed(t, "--cache", store, recipe)
+	for _, n := range w.Nodes {
+		depends := n.ID == "xray.spectra.temperature.table" || n.ID == "xray.spectra.temperature.reduced" ||
+			strings.HasPrefix(n.ID, "xray.spectra.backward") || strings.HasPrefix(n.ID, "reconcile.")
+		if depends != (n.State == "computed") {
+			t.Errorf("%s was %s", n.ID, n.State)
+		}
+	}
+}
+
+// An estimate that fails is said to, blocks the comparison that needs it, and
+// leaves the others their masses.
+func TestOneFailureLetsTheRestFinish(t *testing.T) {
+	recipe := curlew(t)
+	edit(t, filepath.Join(filepath.Dir(recipe), "temperature.csv"), "1.1,1.6,6.835", "1.1,1.6,-6.835")
+	status, out, log := steelyard(t, "weigh", "--cache", t.TempDir(), recipe)
+	if status != exitFailed {
+		t.Errorf("exit status %d, want %d", status, exitFailed)
+	}
+	for _, want := range []string{"lensing.shapes.nfw", "dynamics.redshifts.scaling", "temperature.csv", "row 4"} {
+		if !strings.Contains(out, want) {
+			t.Errorf("the output does not have %q:\n%s", want, out)
+		}
+	}
+	if !strings.Contains(log, "blocked") {
+		t.Errorf("the log does not say that something is blocked: %s", log)
+	}
+}
+
+func TestExitStatuses(t *testing.T) {
+	recipe, store := curlew(t), t.TempDir()
+	missing := filepath.Join(t.TempDir(), "missing.hcl")
+	broken := filepath.Join(t.TempDir(), "broken.hcl")
+	if err := os.WriteFile(broken, []byte("object \"A\" {\n  redshift = -1\n}\n"), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	for _, c := range []struct {
+		args []string
+		want int
+		say  string
+	}{
+		{[]string{"weigh", recipe}, exitDone, ""},
+		{[]string{"weigh", "--fail-above", "0.0001", recipe}, exitTension, "above the 0.0001 allowed"},
+		{[]string{"weigh", "--fail-above", "30", recipe}, exitDone, ""},
+		{[]string{"weigh", "--fail-above", "-1", recipe}, exitWrong, "positive"},
+		{[]string{"weigh", missing}, exitWrong, "does not exist"},
+		{[]string{"weigh", broken}, exitWrong, "redshift"},
+		{[]string{"weigh"}, exitWrong, "arg"},
+		{[]string{"wiegh", recipe}, exitWrong, "unknown command"},
+		{[]string{"weigh", "--wokers", "2", recipe}, exitWrong, "unknown flag"},
+		{[]string{"weigh", "--workers", "0", recipe}, exitWrong, "at least one"},
+		{[]string{"methods", "alchemy"}, exitWrong, "there is no method"},
+		{[]string{"methods", "tangential-shear"}, exitDone, ""},
+		{[]string{"methods"}, exitDone, ""},
+		{[]string{"inspect", recipe}, exitDone, ""},
+	} {
+		status, _, log := steelyard(t, append(c.args, "--cache", store)...)
+		if status != c.want || !strings.Contains(log, c.say) {
+			t.Errorf("steelyard %s: exit status %d, want %d saying %q:\n%s", strings.Join(c.args, " "), status, c.want, c.say, log)
+		}
+	}
+}
+
+// Inspect stores and computes nothing.
+func TestInspectLeavesTheStoreAlone(t *testing.T) {
+	recipe, store := curlew(t), t.TempDir()
+	out, _ := succeed(t, "inspect", "--cache", store, recipe)
+	if !strings.Contains(out, "to compute") {
+		t.Errorf("nothing is to compute:\n%s", out)
+	}
+	files := 0
+	err := filepath.WalkDir(store, func(_ string, e fs.DirEntry, err error) error {
+		if err == nil && !e.IsDir() {
+			files++
+		}
+		return err
+	})
+	if err != nil || files > 0 {
+		t.Errorf("inspect left %d files in the store (%v)", files, err)
+	}
+	weighed(t, "--cache", store, recipe)
+	if out, _ = succeed(t, "inspect", "--cache", store, recipe); strings.Contains(out, "to compute") {
+		t.Errorf("after weighing there is still something to compute:\n%s", out)
+	}
+	edit(t, recipe, "seed  = 7", "seed  = 8")
+	if out, _ = succeed(t, "inspect", "--cache", store, recipe); !strings.Contains(out, "seed: 7 → 8") {
+		t.Errorf("the reason is not given:\n%s", out)
+	}
+}
+
+// Several recipes share a store; with --json each prints one line.
+func TestSeveralRecipes(t *testing.T) {
+	recipe, store := curlew(t), t.TempDir()
+	out, _ := succeed(t, "weigh", "--json", "--cache", store, recipe, recipe)
+	lines := strings.Split(strings.TrimSpace(out), "\n")
+	if len(lines) != 2 {
+		t.Fatalf("%d lines", len(lines))
+	}
+	var second weighing.Weighing
+	if err := json.Unmarshal([]byte(lines[1]), &second); err != nil {
+		t.Fatal(err)
+	}
+	if again := computed(&second); len(again) > 0 {
+		t.Errorf("the second time computed %v", again)
+	}
+}
+
+// The text fits a terminal of 100 columns.
+func TestTextFitsTheTerminal(t *testing.T) {
+	out, _ := succeed(t, "weigh", "--cache", t.TempDir(), curlew(t))
+	for _, line := range strings.Split(out, "\n") {
+		if n := len([]rune(line)); n > 100 {
+			t.Errorf("%d columns: %s", n, line)
+		}
+	}
+}
