@@ -100,10 +100,7 @@ func TestEquilibriumRecovered(t *testing.T) {
 			}
 			s.Minus[i], s.Plus[i] = 1e-6, 1e-6 // so small that the priors do not pull
 		}
-		b, err := newBackward(task, gasOf(coolCore), s)
-		if err != nil {
-			t.Fatal(err)
-		}
+		b := backwardOn(t, task, gasOf(coolCore), s)
 		b.air = a
 		best, err := b.prepare()
 		if err != nil {

@@ -2,155 +2,165 @@ package xray
 
 import (
 	"context"
-	"fmt"
 	"math"
 
 	"steelyard/probes/estimate"
 	"steelyard/probes/halo"
 	"steelyard/probes/infer"
+	"steelyard/probes/method"
+	"steelyard/probes/prior"
 )
 
-// backwardModel is a mass model and a density, turned into temperatures.
-type backwardModel struct {
-	task      *estimate.Task
-	gas       *Gas
-	spectra   *Spectra
-	air       *atmosphere
-	threshold float64 // 200 ρ_crit, Msun/kpc³
-
-	parameters                               estimate.Parameters
-	mass, outer                              estimate.Ref
-	concentration                            estimate.Concentration
-	scale, scatter, nonthermal, meanMolecule estimate.Ref
-	fitted                                   int // parameters that the data alone determine
-	moves                                    int // directions of the density's errors drawn with the rest
+var backward = estimate.Method{
+	Declaration: method.Declaration{
+		Name:    "backward",
+		Version: 1,
+		Summary: "Puts gas of the measured density in hydrostatic equilibrium in a mass model and compares the temperatures with the spectra.",
+		Equation: "n_e kT(r) = p_e + ∫ from r to r_e of μ m_p (1 − f) n_e G M(<r′)/r′² dr′,   p_e = η × the weight of the gas beyond r_e\n" +
+			"kT of a bin = ∫ n² T^(1/4) dV / ∫ n² T^(−3/4) dV along the whole line of sight, divided by temperature_scale",
+		Sources: []string{"Ettori et al. 2010", "Ettori et al. 2013", "Mazzotta et al. 2004", "Vikhlinin et al. 2006"},
+		Data:    [][]string{{"density", "temperature"}},
+		Settings: append([]method.Setting{
+			haloSetting,
+			massSetting,
+			{
+				Name: "concentration", Kind: method.Number, Low: 0.1, High: 100, Relation: relationNames(),
+				Default: method.Distributed(prior.LogUniform(1, 20)),
+				Doc:     "c_200c; wide by default, for the temperatures measure it themselves; with few bins give a relation. Not used by the isothermal models",
+			},
+			{
+				Name: "shape", Kind: method.Number, Low: 0.02, High: 2,
+				Default: method.Distributed(prior.LogNormal(0.18, 0.3)),
+				Doc:     "α of the einasto model", Source: "Gao et al. 2008 (from memory)",
+			},
+			{
+				Name: "core", Kind: method.Number, Unit: "kpc", Length: true, Low: 0.01, High: 5000,
+				Default: method.Distributed(prior.LogUniform(5, 500)),
+				Doc:     "core radius of the cored-isothermal model",
+			},
+			{
+				Name: "outer_pressure_ratio", Kind: method.Number, Low: 1e-3, High: 1e3,
+				Default: method.Distributed(prior.LogUniform(0.1, 10)),
+				Doc:     "η, the thermal pressure at the outer edge of the temperatures over the weight of the gas beyond, as the density's form and the mass model continue; 1 where equilibrium holds to infinity",
+				Source:  "Ettori et al. 2010 leave this pressure free",
+			},
+		}, gasAssumptions...),
+		Cautions: gasCautions,
+	},
+	Uses: []string{"density", "temperature"},
+	Run:  runBackward,
 }
 
-func newBackward(t *estimate.Task, gas *Gas, s *Spectra) (*backwardModel, error) {
-	m := &backwardModel{task: t, gas: gas, spectra: s, air: newAtmosphere(gas, s, nodesPerEfold)}
-	m.threshold = 200 * t.Cosmology.CriticalDensity(t.Object.Redshift)
-	p := &m.parameters
-	m.mass = p.Draw("mass_200c", "solMass", t.Settings["mass"].Prior)
-	var err error
-	if m.concentration, err = p.Concentration(t); err != nil {
+// backwardFit is a fit of a mass model.
+type backwardFit struct {
+	*fit
+	mass  estimate.Ref
+	outer estimate.Ref
+	halo  func(theta []float64) halo.Model
+	// concentration at theta, nil where the model has none or it is drawn itself
+	concentration func(theta []float64) float64
+}
+
+func newBackward(f *fit) (*backwardFit, error) {
+	if f.spectra.Len() < 2 {
+		return nil, f.task.Errorf("a single temperature bin says nothing of how the pressure falls; give two or more")
+	}
+	b := &backwardFit{fit: f}
+	f.air = newAtmosphere(f.gas, f.spectra, nodesPerEfold)
+	b.mass = f.parameters.Draw("mass_200c", "solMass", f.task.Settings["mass"].Prior)
+	if err := b.chooseHalo(); err != nil {
 		return nil, err
 	}
-	m.outer = p.Assume(t.Settings, "outer_pressure_ratio")
-	m.fitted = len(p.Free)
-	m.scale = p.Assume(t.Settings, "temperature_scale")
-	m.nonthermal = p.Assume(t.Settings, "nonthermal_fraction")
-	m.meanMolecule = p.Assume(t.Settings, "mean_molecular_weight")
-	// Last, so that the rest can be fitted without it.
-	m.scatter = p.Assume(t.Settings, "temperature_scatter")
-	return m, nil
-}
-
-// halo returns the mass model at theta.
-func (m *backwardModel) halo(theta []float64) halo.NFW {
-	m200 := m.mass.Of(theta)
-	return halo.NewNFW(m200, m.concentration.Of(theta, m200), m.threshold)
-}
-
-// solve sets the temperatures at theta, which holds the values of the
-// parameters and then the moves of the density; false where the model is
-// impossible.
-func (m *backwardModel) solve(s *state, theta []float64) bool {
-	h := m.halo(theta)
-	for j, r := range m.air.grid.r {
-		s.mass[j] = h.Mass(r)
-	}
-	f, mu, scale, eta := m.nonthermal.Of(theta), m.meanMolecule.Of(theta), m.scale.Of(theta), m.outer.Of(theta)
-	if !(f < 1 && mu > 0 && scale > 0 && eta > 0) {
-		return false
-	}
-	return m.air.solve(s, mu*(1-f), eta, theta[len(m.parameters.Free):])
-}
-
-// problem is the posterior: the parameters, and a unit normal for every drawn
-// direction of the density's errors.
-func (m *backwardModel) problem() infer.Problem {
-	p := infer.Problem{Free: append([]infer.Free(nil), m.parameters.Free...)}
-	for k := range m.moves {
-		p.Free = append(p.Free, infer.Free{Name: fmt.Sprintf("density_%d", k+1), Prior: unitNormal})
-	}
-	p.Likelihood = func() func([]float64) float64 {
-		s := m.air.newState()
-		return func(theta []float64) float64 {
-			if !m.solve(s, theta) {
-				return math.Inf(-1)
-			}
-			ln := m.spectra.lnLikelihood(s.Bins, m.scale.Of(theta), m.scatter.Of(theta))
-			if math.IsNaN(ln) {
-				return math.Inf(-1)
-			}
-			return ln
+	b.outer = f.parameters.Assume(f.task.Settings, "outer_pressure_ratio")
+	f.assume()
+	f.predict = func(s *state, theta []float64) bool {
+		strength, ok := f.strength(theta)
+		eta := b.outer.Of(theta)
+		if !ok || !(eta > 0) {
+			return false
 		}
+		h := b.halo(theta)
+		for j, r := range f.air.grid.r {
+			s.mass[j] = h.Mass(r)
+		}
+		return f.air.solve(s, strength, eta, f.drawn(theta))
 	}
-	return p
+	return b, nil
+}
+
+// prepare fits the model with the quoted errors alone, and chooses which
+// directions of the density's errors to draw.
+func (b *backwardFit) prepare() (bestFit, error) {
+	b.layModes()
+	quoted, err := b.best(0, b.starts()...)
+	if err != nil {
+		return quoted, err
+	}
+	b.turn(quoted)
+	return quoted, nil
+}
+
+// starts are scores of the first parameter: of the mass, if that is drawn, 2e13,
+// 6e14 and 5e15 Msun by its default prior.
+func (b *backwardFit) starts() []float64 {
+	if b.mass.Drawn() {
+		return []float64{-0.5, 0.5, 1.5}
+	}
+	return []float64{0}
 }
 
 // runBackward weighs the object by the backward method.
 func runBackward(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
-	gas, spectra := new(Gas), new(Spectra)
-	if err := gas.UnmarshalBinary(t.Reduced["density"]); err != nil {
-		return nil, t.Errorf("density: %w", err)
-	}
-	if err := spectra.UnmarshalBinary(t.Reduced["temperature"]); err != nil {
-		return nil, t.Errorf("temperature: %w", err)
-	}
-	m, err := newBackward(t, gas, spectra)
+	f, err := newFit(t)
 	if err != nil {
 		return nil, err
 	}
-	quoted, err := m.prepare()
+	b, err := newBackward(f)
 	if err != nil {
 		return nil, err
 	}
-	sample, err := infer.DrawPosterior(ctx, m.problem(), t.Sampling)
+	quoted, err := b.prepare()
+	if err != nil {
+		return nil, err
+	}
+	sample, err := infer.DrawPosterior(ctx, b.problem(), t.Sampling)
 	if err != nil {
 		return nil, t.Errorf("%w", err)
 	}
-	return m.finish(sample, quoted)
-}
-
-// finish lays out the draws and says what the reader must know.
-func (m *backwardModel) finish(sample *infer.Sample, quoted bestFit) (*infer.Draws, error) {
-	n, s := m.spectra.Len(), m.air.newState()
-	best, err := m.fit(m.typicalScatter(sample))
+	best, err := b.best(b.typicalScatter(sample), b.starts()...)
 	if err != nil {
 		return nil, err
 	}
-	fit := estimate.Fit{
-		Sample: sample, Parameters: &m.parameters,
-		Covers: [2]float64{m.spectra.Inner[0], m.spectra.Outer[n-1]},
-		Chi2:   best.chi2, Dof: best.dof,
+	b.drawRest(sample)
+	return b.finish(sample, quoted, best)
+}
+
+// finish lays out the draws and says what the reader must know.
+func (b *backwardFit) finish(sample *infer.Sample, quoted, best bestFit) (*infer.Draws, error) {
+	s := b.air.newState()
+	result := estimate.Fit{
+		Sample: sample, Parameters: &b.parameters, Covers: b.covers(), Chi2: best.chi2, Dof: best.dof,
 		LnMass: func(theta, radii, out []float64) error {
-			h := m.halo(theta)
+			h := b.halo(theta)
 			for j, r := range radii {
 				out[j] = math.Log(h.Mass(r))
 			}
 			return nil
 		},
 		Derived: []estimate.Derived{{Name: "outer_pressure", Unit: "keV cm**-3", Of: func(theta []float64) float64 {
-			m.solve(s, theta)
-			return s.pressure[m.air.grid.edge]
+			b.predict(s, theta)
+			return s.pressure[b.air.grid.edge]
 		}}},
-		Assumes: m.assumes(), Checks: []infer.Check{quoted.check()}, Warnings: m.warnings(quoted),
+		Assumes: append([]string{"gas in hydrostatic equilibrium in a spherical mass: " + b.task.Settings["halo"].Text}, b.assumes()...),
+		Checks:  []infer.Check{quoted.check()}, Warnings: b.warnings(quoted),
 	}
-	if m.concentration.Related() {
-		fit.Derived = append(fit.Derived, estimate.Derived{Name: "concentration", Of: func(theta []float64) float64 {
-			return m.concentration.Of(theta, m.mass.Of(theta))
-		}})
+	if b.concentration != nil {
+		result.Derived = append(result.Derived, estimate.Derived{Name: "concentration", Of: b.concentration})
 	}
-	return m.task.Finish(fit)
-}
-
-// typicalScatter is the median of the drawn scatter of spectral temperatures,
-// or the exact number that stands for it.
-func (m *backwardModel) typicalScatter(sample *infer.Sample) float64 {
-	drawn := make([]float64, len(sample.Values))
-	for i, theta := range sample.Values {
-		drawn[i] = m.scatter.Of(theta)
+	d, err := b.task.Finish(result)
+	if err != nil {
+		return nil, err
 	}
-	return infer.Percentiles(drawn, 50)[0]
+	b.addGas(d, sample)
+	return d, nil
 }

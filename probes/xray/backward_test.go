@@ -56,7 +56,7 @@ func TestBackwardFindsTheHalo(t *testing.T) {
 			t.Errorf("ln M inside %g kpc is off by %.2f standard deviations of %.3f", r, p, sd)
 		}
 	}
-	want := []string{"mass_200c", "concentration", "outer_pressure_ratio", "temperature_scatter", "outer_pressure"}
+	want := []string{"mass_200c", "concentration", "outer_pressure_ratio", "temperature_scatter", "outer_pressure", "gas_mass_500c", "gas_fraction_500c"}
 	var got []string
 	for _, p := range d.Parameters {
 		got = append(got, p.Name)
@@ -109,10 +109,7 @@ func TestAssumptionsMultiply(t *testing.T) {
 		for i := range s.Minus { // so small that the priors do not pull
 			s.Minus[i], s.Plus[i] = s.Minus[i]/1000, s.Plus[i]/1000
 		}
-		m, err := newBackward(task, gasOf(coolCore), s)
-		if err != nil {
-			t.Fatal(err)
-		}
+		m := backwardOn(t, task, gasOf(coolCore), s)
 		best, err := m.prepare()
 		if err != nil {
 			t.Fatal(err)
@@ -238,10 +235,7 @@ func TestImpossible(t *testing.T) {
 	}
 	// Gas that rises outwards for ever has no finite weight.
 	rising := &Gas{Form: Beta, Parameters: []float64{0.003, 100, -0.6}}
-	m, err := newBackward(task, rising, annuli(0, 100, 300, 900))
-	if err != nil {
-		t.Fatal(err)
-	}
+	m := backwardOn(t, task, rising, annuli(0, 100, 300, 900))
 	if _, err := m.prepare(); err == nil || !strings.Contains(err.Error(), "can hold this gas") {
 		t.Errorf("gas of infinite weight: %v", err)
 	}

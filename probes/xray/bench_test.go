@@ -44,15 +44,12 @@ func BenchmarkPrepare(b *testing.B) {
 	}
 }
 
-func prepared(b *testing.B, task *estimate.Task) (*backwardModel, bestFit) {
-	gas, s := new(Gas), new(Spectra)
-	if err := gas.UnmarshalBinary(task.Reduced["density"]); err != nil {
+func prepared(b *testing.B, task *estimate.Task) (*backwardFit, bestFit) {
+	f, err := newFit(task)
+	if err != nil {
 		b.Fatal(err)
 	}
-	if err := s.UnmarshalBinary(task.Reduced["temperature"]); err != nil {
-		b.Fatal(err)
-	}
-	m, err := newBackward(task, gas, s)
+	m, err := newBackward(f)
 	if err != nil {
 		b.Fatal(err)
 	}

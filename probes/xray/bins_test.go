@@ -14,7 +14,7 @@ func onlyTemperature(t testing.TB, table *catalogue.Table) *estimate.Task {
 	return &estimate.Task{
 		Name: "xray.a", Object: estimate.Object{Redshift: 0.2}, Cosmology: flat(t, 70, 0.3),
 		Tables: map[string]*catalogue.Table{"temperature": table, "density": table},
-		Blocks: map[string]method.Settings{"temperature": {}, "density": {}},
+		Blocks: map[string]method.Settings{"temperature": {}, "density": {}}, Settings: method.Settings{},
 	}
 }
 
@@ -59,7 +59,10 @@ func TestFaultyBins(t *testing.T) {
 func TestTooFewBins(t *testing.T) {
 	one := []float64{1}
 	tab := table("one.csv", column("inner", "kpc", []float64{0}), column("outer", "kpc", []float64{100}), column("value", "keV", one), column("error", "keV", one))
-	if _, err := reduceTemperature(context.Background(), onlyTemperature(t, tab)); err == nil || !strings.Contains(err.Error(), "single temperature bin") {
+	task := onlyTemperature(t, tab)
+	fillDefaults(backward.Settings, task.Settings)
+	s := annuli(0, 100)
+	if _, err := newBackward(&fit{task: task, gas: gasOf(coolCore), spectra: s}); err == nil || !strings.Contains(err.Error(), "single temperature bin") {
 		t.Errorf("a single temperature bin: %v", err)
 	}
 	if _, err := reduceDensity(context.Background(), onlyTemperature(t, tab)); err == nil || !strings.Contains(err.Error(), "at least 3") {

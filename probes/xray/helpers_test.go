@@ -141,3 +141,13 @@ func typical() mock.Spectra {
 		TemperatureErrors: []float64{0.03, 0.03, 0.03, 0.03, 0.04, 0.04, 0.05, 0.07, 0.1, 0.15}, Skew: 0.1,
 	}
 }
+
+// backwardOn is the fit of backward to the given gas and spectra.
+func backwardOn(t testing.TB, task *estimate.Task, gas *Gas, s *Spectra) *backwardFit {
+	t.Helper()
+	b, err := newBackward(&fit{task: task, gas: gas, spectra: s})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return b
+}

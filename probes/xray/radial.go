@@ -69,16 +69,23 @@ func (g *radial) first(j int) int {
 // covers the interval j.
 func (g *radial) add(out []float64, j int, ln, weight float64) {
 	first := g.first(j)
-	t := (ln - g.ln[first]) / g.step
-	for k := range points {
-		l := 1.0
-		for m := range points {
-			if m != k {
-				l *= (t - float64(m)) / float64(k-m)
-			}
-		}
+	for k, l := range lagrange((ln - g.ln[first]) / g.step) {
 		out[first+k] += weight * l
 	}
+}
+
+// lagrange returns the polynomials L_k that are one at k and zero at the other
+// whole numbers from 0 to points−1, taken at t.
+func lagrange(t float64) (l [points]float64) {
+	for k := range points {
+		l[k] = 1
+		for m := range points {
+			if m != k {
+				l[k] *= (t - float64(m)) / float64(k-m)
+			}
+		}
+	}
+	return l
 }
 
 // outside returns weights w with Σ w_j q(r_j) = ∫ f q dV over the gas that lies

@@ -117,9 +117,6 @@ func reduceTemperature(_ context.Context, t *estimate.Task) (encoding.BinaryMars
 			return nil, t.Errorf("%s: a temperature of %g keV in the bin at %.4g kpc is not that of a cluster's gas; is the unit another?", table.File, kT, bins.Inner[i])
 		}
 	}
-	if bins.Len() < 2 {
-		return nil, t.Errorf("%s: a single temperature bin says nothing of how the pressure falls; give two or more", table.File)
-	}
 	s := &Spectra{Bins: *bins, Projected: true}
 	if v := t.Blocks["temperature"]["projected"]; v.Set {
 		s.Projected = v.Flag

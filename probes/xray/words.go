@@ -2,8 +2,10 @@ package xray
 
 import (
 	"fmt"
+	"strings"
 
 	"steelyard/probes/infer"
+	"steelyard/probes/method"
 )
 
 // poorFit is the p-value below which a fit is called poor.
@@ -14,32 +16,38 @@ const poorFit = 1e-3
 const coolGas = 3
 
 // assumes says in words what the masses rest on.
-func (m *backwardModel) assumes() []string {
-	outer := m.spectra.Outer[m.spectra.Len()-1]
-	lines := []string{
-		"gas in hydrostatic equilibrium in a spherical NFW halo",
-		m.gas.describe(2 * outer),
-		fmt.Sprintf("thermal pressure free at %.4g kpc, where the temperatures end; beyond, the same share of the weight of the gas above holds", outer),
-	}
-	if m.spectra.Projected {
+func (f *fit) assumes() []string {
+	lines := []string{f.gas.describe(2 * f.covers()[1])}
+	if f.spectra.Projected {
 		lines = append(lines, "temperatures projected along the whole line of sight with the spectroscopic-like weight n² T^(-3/4) (Mazzotta et al. 2004)")
 	} else {
 		lines = append(lines, "temperatures taken as those of spherical shells (projected = false)")
 	}
-	for _, name := range []string{"concentration", "outer_pressure_ratio", "temperature_scale", "temperature_scatter", "nonthermal_fraction", "mean_molecular_weight", "intrinsic_scatter"} {
-		v := m.task.Settings[name]
+	return append(lines, f.stated(gasAssumptions)...)
+}
+
+// stated says in words what the settings are.
+func (f *fit) stated(settings []method.Setting) []string {
+	var lines []string
+	for _, s := range settings {
+		v := f.task.Settings[s.Name]
 		switch {
-		case !v.Set:
+		case !v.Set || s.Kind != method.Number:
 			continue
 		case v.Relation != "":
-			lines = append(lines, fmt.Sprintf("%s = relation(%q)", name, v.Relation))
+			lines = append(lines, fmt.Sprintf("%s = relation(%q)", s.Name, v.Relation))
 		case v.Nuisance != "":
-			lines = append(lines, fmt.Sprintf("%s = nuisance.%s, %s", name, v.Nuisance, v.Prior))
+			lines = append(lines, fmt.Sprintf("%s = nuisance.%s, %s", s.Name, v.Nuisance, v.Prior))
 		default:
-			lines = append(lines, fmt.Sprintf("%s = %s", name, v.Prior))
+			lines = append(lines, strings.TrimSpace(fmt.Sprintf("%s = %s %s", s.Name, v.Prior, s.Unit)))
 		}
 	}
 	return lines
+}
+
+// covers is the range of radii that the temperatures reach.
+func (f *fit) covers() [2]float64 {
+	return [2]float64{f.spectra.Inner[0], f.spectra.Outer[f.spectra.Len()-1]}
 }
 
 // describe says where the density comes from, how well it fits, and how it goes
@@ -58,19 +66,19 @@ func (g *Gas) describe(r float64) string {
 }
 
 // warnings lists what the reader must know about the data and the fit.
-func (m *backwardModel) warnings(q bestFit) []string {
+func (f *fit) warnings(q bestFit) []string {
 	var w []string
-	s, g, n := m.spectra, m.gas, m.spectra.Len()
+	s, g, n := f.spectra, f.gas, f.spectra.Len()
 	w = append(append(w, g.Notes...), s.Notes...)
 	if q.dof > 0 && q.pValue < poorFit {
 		line := fmt.Sprintf("the fit is poor with the quoted temperature errors alone: χ² = %.0f for %d degrees of freedom (p = %.1g)", q.chi2, q.dof, q.pValue)
-		if m.scatter.Drawn() {
+		if f.scatter.Drawn() {
 			line += "; the temperature scatter drawn with the mass makes up for it"
 		}
 		w = append(w, line)
 	}
-	if n <= m.fitted {
-		w = append(w, fmt.Sprintf("%d temperature bins for %d free parameters: the result leans on the priors", n, m.fitted))
+	if n <= f.fitted {
+		w = append(w, fmt.Sprintf("%d temperature bins for %d free parameters: the result leans on the priors", n, f.fitted))
 	}
 	if kT := s.coolest(); kT < coolGas {
 		w = append(w, fmt.Sprintf("the coolest bin has kT = %.2g keV; below %d keV the weight that turns gas into a spectral temperature is not calibrated", kT, coolGas))
