@@ -27,7 +27,7 @@ var curlewTruth = mock.Truth{
 // truth.json.
 func curlew(dir string) error {
 	t := curlewTruth
-	stream := func(n uint64) *rand.Rand { return rand.New(rand.NewPCG(20, n)) }
+	stream := func(n uint64) *rand.Rand { return rand.New(rand.NewPCG(22, n)) }
 
 	gas := mock.VikhlininGas{N0: 0.012, Rc: 120, Beta: 0.62, Alpha: 0.6, Rs: 900, Epsilon: 1.5}
 	spectra := t.Spectra(mock.Gas{Electrons: gas.Electrons}, mock.Spectra{
@@ -36,9 +36,9 @@ func curlew(dir string) error {
 		TemperatureErrors: []float64{0.03, 0.03, 0.03, 0.035, 0.04, 0.05, 0.06, 0.08, 0.12}, Skew: 0.1,
 	}, stream(1))
 	shapes := t.Shapes(mock.Shapes{
-		Galaxies: 6000, Field: 15 * arcmin, RedshiftScale: 0.6, RedshiftScatter: 0.03, Quiet: 0.22, Noisy: 0.34,
+		Galaxies: 8000, Field: 15 * arcmin, RedshiftScale: 0.6, RedshiftScatter: 0.03, Quiet: 0.20, Noisy: 0.32,
 	}, stream(2))
-	motions := t.Motions(mock.Motions{Members: 180, Infalling: 15, Field: 60, Radius: 12 * arcmin, RedshiftError: 1.5e-4}, stream(3))
+	motions := t.Motions(mock.Motions{Members: 180, Infalling: 12, Field: 24, Radius: 12 * arcmin, RedshiftError: 1.5e-4}, stream(3))
 
 	type column = catalogue.OutColumn
 	degrees := func(x []float64) []float64 { return rounded(scaled(x, 180/math.Pi), 6) }

@@ -3,6 +3,7 @@ package main
 import (
 	"encoding/json"
 	"fmt"
+	"strconv"
 	"strings"
 	"unicode/utf8"
 
@@ -138,13 +139,16 @@ func form(s method.Setting) string {
 	case s.Required:
 		text += "; required"
 	case s.Default.Set:
-		text += "; default " + defaultOf(s.Default)
+		text += "; default " + defaultOf(s)
 	}
 	return text
 }
 
-func defaultOf(v method.Value) string {
+func defaultOf(s method.Setting) string {
+	v := s.Default
 	switch {
+	case s.Kind == method.Flag:
+		return strconv.FormatBool(v.Flag)
 	case v.Relation != "":
 		return `relation("` + v.Relation + `")`
 	case v.Text != "":
