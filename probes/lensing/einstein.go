@@ -135,7 +135,8 @@ func (r *ringPart) state(best lens, fit *estimate.Fit) {
 	fit.Dof++
 	measured := r.radius.Median()
 	cover(fit, measured, measured)
-	fit.Assumes = append(fit.Assumes, fmt.Sprintf("Einstein radius: %s kpc, of a source at redshift %g", r.radius, r.redshift))
+	fit.Assumes = append(fit.Assumes, fmt.Sprintf("Einstein radius: %.4g +%.2g -%.2g kpc, of a source at redshift %g",
+		measured, r.radius.FromScore(1)-measured, measured-r.radius.FromScore(-1), r.redshift))
 	fit.Derived = append(fit.Derived, estimate.Derived{Name: "projected_mass", Unit: "solMass", Of: r.projectedMass})
 }
 
