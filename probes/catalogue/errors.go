@@ -80,3 +80,11 @@ func shown(text string) string {
 	}
 	return strconv.Quote(text)
 }
+
+// counted writes "1 value", "2 values".
+func counted(n int, what string) string {
+	if n != 1 {
+		what += "s"
+	}
+	return strconv.Itoa(n) + " " + what
+}

@@ -7,6 +7,8 @@ import (
 	"runtime"
 	"strings"
 	"testing"
+
+	"steelyard/probes/units"
 )
 
 // fitsFile puts a FITS file together from cards, padded to blocks.
@@ -128,11 +130,17 @@ func readWhole(t *testing.T, content []byte, path string) {
 	}
 	var want []Want
 	for i, c := range src.header().Columns {
-		want = append(want, Want{Role: fmt.Sprint(i), Name: c.Name, Unit: c.Unit, As: "", Text: c.Text, Raw: i%2 == 0})
+		w := Want{Role: fmt.Sprint(i), Name: c.Name, Text: c.Text, Raw: i%2 == 0}
+		if u, err := units.Parse(c.Unit); err == nil {
+			w.As = u.String()
+		}
+		if _, err := resolve(src.header(), []Want{w}, nil); err == nil {
+			want = append(want, w)
+		}
 	}
 	plans, err := resolve(src.header(), want, nil)
 	if err != nil {
-		return
+		t.Fatal(err) // each of them could be resolved alone
 	}
 	table, err := gather(src, plans, nil, Limits{Rows: 1000, Bytes: 1 << 20})
 	if err != nil {

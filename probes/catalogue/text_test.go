@@ -67,7 +67,7 @@ func TestRefusesText(t *testing.T) {
 		{"misspelt", "t.csv", "kT_lo,kT\n1,2\n", []Want{{Role: "x", Name: "kT_low"}}, `: there is no column "kT_low"; did you mean "kT_lo"? (the columns are: kT_lo, kT)`},
 		{"nothing near", "t.csv", "ra,dec\n1,2\n", []Want{{Role: "x", Name: "redshift"}}, `: there is no column "redshift" (the columns are: ra, dec)`},
 		{"twice", "t.csv", "a,a\n1,2\n", []Want{a}, `, column "a": two columns have this name`},
-		{"ragged, short", "t.csv", "a,b\n1,2\n3\n", []Want{a}, ", row 2 (line 3): the row has 1 values, but the header names 2 columns"},
+		{"ragged, short", "t.csv", "a,b\n1,2\n3\n", []Want{a}, ", row 2 (line 3): the row has 1 value, but the header names 2 columns"},
 		{"ragged, long", "t.txt", "# hello\na b\n1 2\n\n3 4 5\n", []Want{a}, ", row 2 (line 5): the row has 3 values, but the header names 2 columns"},
 		{"not a number", "t.csv", "a,b\n1,2\nabc,4\n", []Want{a}, `, row 2 (line 3), column "a": holds "abc", which is not a number`},
 		{"empty cell", "t.csv", "a,b\n1,2\n,4\n", []Want{a}, `, row 2 (line 3), column "a": is empty; a number is expected in every row`},

@@ -69,7 +69,7 @@ func (t *textTable) next() (bool, error) {
 		case len(t.fields) == 0 || len(t.fields) == 1 && strings.TrimSpace(t.fields[0]) == "":
 			continue // a line of blanks
 		default:
-			return false, problem("the row has %d values, but the header names %d columns", len(t.fields), n)
+			return false, problem("the row has %s, but the header names %s", counted(len(t.fields), "value"), counted(n, "column"))
 		}
 	}
 }

@@ -91,7 +91,7 @@ func TestConverterAgainstExactArithmetic(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		for range 3000 {
+		for range 1000 {
 			x := (rng.Float64() - 0.5) * math.Pow(10, float64(rng.IntN(80)-40))
 			text := strconv.FormatFloat(x, 'g', 1+rng.IntN(20), 64)
 			for _, got := range []struct {

@@ -54,6 +54,7 @@ func TestRefusesUnits(t *testing.T) {
 		{"m**99999999999999999999", 3, "too large"},
 		{"(m**24)**9223372036854775807", 9, "too large"},
 		{"10**400000 m", 4, "too large"},
+		{"20000000E000400 m", 0, "beyond what a number can hold"},
 		{"1e999999999 m", 0, "beyond what a number can hold"},
 		{"barn**24.J**24.solLum**24", 0, "no quantity has"},
 		{strings.Repeat("m.", 200), 0, "more than 200"},

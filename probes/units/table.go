@@ -39,8 +39,8 @@ var (
 	dalton       = decimal("1.66053906660e-27")   // CODATA 2018, kg
 )
 
-// known lists the units of the VOUnits recommendation (version 1.1, section
-// 2.2) that measure something this program reads.
+// known lists the units of the IVOA VOUnits recommendation that measure something
+// this program reads, and two that it lacks.
 var known = []entry{
 	{"m", one, Dimension{length: 1}, true},
 	{"g", decimal("1e-3"), Dimension{mass: 1}, true},
@@ -69,7 +69,7 @@ var known = []entry{
 	{"arcmin", minute, Dimension{angle: 1}, true},
 	{"arcsec", second, Dimension{angle: 1}, true},
 	{"mas", times(second, decimal("1e-3")), Dimension{angle: 1}, false},
-	{"hourangle", times(degree, decimal("15")), Dimension{angle: 1}, false}, // not in VOUnits: a right ascension counted in hours
+	{"hourangle", times(degree, decimal("15")), Dimension{angle: 1}, false}, // not in VOUnits: right ascension in hours
 
 	{"Hz", one, Dimension{time: -1}, true},
 	{"N", one, Dimension{mass: 1, length: 1, time: -2}, true},
