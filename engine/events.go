@@ -37,6 +37,7 @@ type Event struct {
 	Expected float64 // what it should take, 0 when never computed before
 	Err      error
 	Text     string
-	Finished int // nodes whose outcome is known
-	Total    int // nodes in the graph
+	Finished int     // nodes whose outcome is known
+	Total    int     // nodes in the graph
+	Left     float64 // seconds the run should still take, -1 when unknown
 }

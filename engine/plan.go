@@ -19,6 +19,8 @@ type step struct {
 	cause   int // of a blocked step: the step that failed
 	waiting int // inputs not yet known
 
+	pending  bool    // was not known when the run began
+	begun    bool    // was given to a worker
 	expected float64 // seconds, 0 when unknown
 	chain    float64 // expected seconds of the longest chain from here down
 	seconds  float64 // what computing took

@@ -63,7 +63,9 @@ type run struct {
 	storing  int                 // outputs being stored
 	unstored int64               // their bytes
 
-	decided int // steps whose outcome is known
+	decided int     // steps whose outcome is known
+	idle    float64 // expected seconds of steps neither decided nor begun
+	unknown int     // steps not decided whose expected time is not known
 
 	mu     sync.Mutex
 	notes  []string      // warnings
@@ -135,6 +137,15 @@ func (r *run) begin() error {
 			return err
 		}
 	}
+	for i := range r.steps {
+		if s := &r.steps[i]; s.state == "" {
+			s.pending = true
+			r.idle += s.expected
+			if s.expected == 0 {
+				r.unknown++
+			}
+		}
+	}
 	r.sort(missing, found)
 	r.emit(Event{Type: Planned})
 	return nil
@@ -200,6 +211,10 @@ func (r *run) start(ctx context.Context) {
 		}
 		r.running[s.key] = nil
 		r.working[i] = time.Now()
+		if s.pending {
+			r.idle -= s.expected
+			s.begun = true
+		}
 		workers := r.o.Workers / min(r.o.Workers, len(r.working)+r.ready.Len())
 		r.emit(Event{Type: Started, Node: n.ID, Kind: n.Kind, Expected: s.expected})
 		go r.work(ctx, i, workers)
@@ -328,12 +343,36 @@ func (r *run) free(i int) {
 func (r *run) settle(i int) {
 	s, n := &r.steps[i], &r.graph.nodes[i]
 	r.decided++
+	if s.pending && !s.begun {
+		r.idle -= s.expected
+	}
+	if s.pending && s.expected == 0 {
+		r.unknown--
+	}
 	r.emit(Event{Type: Finished, Node: n.ID, Kind: n.Kind, State: s.state, Seconds: s.seconds, Err: s.err})
 }
 
 func (r *run) emit(e Event) {
-	e.Finished, e.Total = r.decided, len(r.steps)
+	e.Finished, e.Total, e.Left = r.decided, len(r.steps), r.left()
 	r.o.Events(e)
+}
+
+// left estimates how long the run still takes: the expected time shared among
+// the workers, but no less than the longest running node still needs.
+func (r *run) left() float64 {
+	switch {
+	case r.decided == len(r.steps):
+		return 0
+	case r.unknown > 0:
+		return -1
+	}
+	sum, longest := r.idle, 0.0
+	for i, since := range r.working {
+		rest := max(0, r.steps[i].expected-time.Since(since).Seconds())
+		sum += rest
+		longest = max(longest, rest)
+	}
+	return max(longest, sum/float64(r.o.Workers))
 }
 
 // note keeps a warning and announces it. Only the loop may call it.
