@@ -43,10 +43,10 @@ func readPairs(table *catalogue.Table, n int) ([]float64, error) {
 	for k := range value {
 		i, j := int(first[k])-1, int(second[k])-1
 		if float64(i+1) != first[k] || float64(j+1) != second[k] || i < 0 || j < 0 || i >= n || j >= n {
-			return nil, fmt.Errorf("%s: row %d: bins %g and %g, where the profile has bins 1 to %d", table.File, table.Rows[k], first[k], second[k], n)
+			return nil, fmt.Errorf("%s, row %d: bins %g and %g, where the profile has bins 1 to %d", table.File, table.Rows[k], first[k], second[k], n)
 		}
 		if given[i*n+j] && c[i*n+j] != value[k] {
-			return nil, fmt.Errorf("%s: row %d: bins %d and %d have another covariance in an earlier row", table.File, table.Rows[k], i+1, j+1)
+			return nil, fmt.Errorf("%s, row %d: bins %d and %d have another covariance in an earlier row", table.File, table.Rows[k], i+1, j+1)
 		}
 		c[i*n+j], c[j*n+i] = value[k], value[k]
 		given[i*n+j], given[j*n+i] = true, true
@@ -69,7 +69,7 @@ func readMatrix(table *catalogue.Table, n int) ([]float64, error) {
 		for j := range i {
 			a, b := c[i*n+j], c[j*n+i]
 			if math.Abs(a-b) > 1e-6*(math.Abs(a)+math.Abs(b)) { // quoted rounded
-				return nil, fmt.Errorf("%s: row %d: bins %d and %d have a covariance of %g, the other way round of %g", table.File, table.Rows[i], i+1, j+1, a, b)
+				return nil, fmt.Errorf("%s, row %d: bins %d and %d have a covariance of %g, the other way round of %g", table.File, table.Rows[i], i+1, j+1, a, b)
 			}
 			c[i*n+j], c[j*n+i] = (a+b)/2, (a+b)/2
 		}

@@ -34,7 +34,7 @@ func (s *shapes) duplicates() ([]string, error) {
 			repeated[key] = i
 		case s.ra[i] != s.ra[j] || s.dec[i] != s.dec[j]: // two positions, one key
 		case s.e1[i] == s.e1[j] && s.e2[i] == s.e2[j]:
-			return nil, fmt.Errorf("%s: rows %d and %d are one galaxy: the same position and shape; keep one of each such pair", s.file, s.rows[j], s.rows[i])
+			return nil, fmt.Errorf("%s, rows %d and %d are one galaxy: the same position and shape; keep one of each such pair", s.file, s.rows[j], s.rows[i])
 		default:
 			if together++; together == 1 {
 				example = s.rows[i]

@@ -84,7 +84,7 @@ func newShapes(t *estimate.Task) (*shapes, error) {
 	for i, z := range s.redshift {
 		// Photometric redshifts scatter below zero; −1 and −99 mean "none".
 		if !(z > -0.5 && z < farthest) {
-			return nil, fmt.Errorf("%s: row %d: redshift %g; leave out such rows with `select`", s.file, s.rows[i], z)
+			return nil, fmt.Errorf("%s, row %d: redshift %g; leave out such rows with `select`", s.file, s.rows[i], z)
 		}
 		far = max(far, z)
 	}

@@ -180,15 +180,15 @@ func TestBadCatalogues(t *testing.T) {
 		says  []string
 	}{
 		{"ellipticity above 1", func(k *estimate.Task) { columns(k, "e1")[41] = 1.2 }, []string{"shapes.fits", "row 42", "ellipticity of 1.2", "select"}},
-		{"ellipticity not a number", func(k *estimate.Task) { columns(k, "e2")[6] = math.NaN() }, []string{"shapes.fits: row 7", "ellipticity"}},
-		{"negative weight", func(k *estimate.Task) { columns(k, "weight")[9] = -1 }, []string{"shapes.fits: row 10", "weight"}},
+		{"ellipticity not a number", func(k *estimate.Task) { columns(k, "e2")[6] = math.NaN() }, []string{"shapes.fits, row 7", "ellipticity"}},
+		{"negative weight", func(k *estimate.Task) { columns(k, "weight")[9] = -1 }, []string{"shapes.fits, row 10", "weight"}},
 		{"weights of zero", func(k *estimate.Task) { clear(columns(k, "weight")) }, []string{"shapes.fits", "every weight is zero"}},
 		{"degrees read as radians", func(k *estimate.Task) {
 			for i := range columns(k, "dec") {
 				columns(k, "dec")[i] *= 180 / math.Pi
 			}
-		}, []string{"shapes.fits: row 1: declination"}},
-		{"no redshift known", func(k *estimate.Task) { columns(k, "redshift")[3] = -99 }, []string{"shapes.fits: row 4", "-99", "select"}},
+		}, []string{"shapes.fits, row 1: declination"}},
+		{"no redshift known", func(k *estimate.Task) { columns(k, "redshift")[3] = -99 }, []string{"shapes.fits, row 4", "-99", "select"}},
 		{"all in front", func(k *estimate.Task) {
 			for i := range columns(k, "redshift") {
 				columns(k, "redshift")[i] = 0.2
@@ -211,7 +211,7 @@ func TestBadCatalogues(t *testing.T) {
 			for _, c := range k.Tables["galaxies"].Columns {
 				c.Values[900] = c.Values[30]
 			}
-		}, []string{"shapes.fits: rows 31 and 901 are one galaxy"}},
+		}, []string{"shapes.fits, rows 31 and 901 are one galaxy"}},
 		{"redshifts twice", func(k *estimate.Task) { k.Blocks["galaxies"]["source_redshift"] = method.Exactly(1) }, []string{"twice"}},
 		{"no redshifts", func(k *estimate.Task) {
 			g := k.Tables["galaxies"]

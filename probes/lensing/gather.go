@@ -152,11 +152,11 @@ func (s *shapes) sum(from, to int) sums {
 func (s *shapes) check(i int, w float64) error {
 	switch e := math.Hypot(s.e1[i], s.e2[i]); {
 	case !(e < 1):
-		return fmt.Errorf("%s: row %d: an ellipticity of %.4g, where (a−b)/(a+b) is below 1; leave out such rows with `select`, or convert shapes measured as (a²−b²)/(a²+b²)", s.file, s.rows[i], e)
+		return fmt.Errorf("%s, row %d: an ellipticity of %.4g, where (a−b)/(a+b) is below 1; leave out such rows with `select`, or convert shapes measured as (a²−b²)/(a²+b²)", s.file, s.rows[i], e)
 	case !(w >= 0):
-		return fmt.Errorf("%s: row %d: weight %g is below zero", s.file, s.rows[i], w)
+		return fmt.Errorf("%s, row %d: weight %g is below zero", s.file, s.rows[i], w)
 	case !(math.Abs(s.dec[i]) <= math.Pi/2):
-		return fmt.Errorf("%s: row %d: declination %.6g degrees", s.file, s.rows[i], s.dec[i]*180/math.Pi)
+		return fmt.Errorf("%s, row %d: declination %.6g degrees", s.file, s.rows[i], s.dec[i]*180/math.Pi)
 	}
 	return nil
 }

@@ -3,6 +3,7 @@ package lensing
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"steelyard/probes/estimate"
 	"steelyard/probes/halo"
@@ -46,6 +47,14 @@ func relationNames() []string {
 		names = append(names, r.Name)
 	}
 	return names
+}
+
+// uses names, by halo, the settings of its shape.
+var uses = map[string][]string{
+	"nfw":              {"concentration"},
+	"hernquist":        {"concentration"},
+	"einasto":          {"concentration", "alpha"},
+	"cored-isothermal": {"core_radius"},
 }
 
 // massModel is the spherical halo that an estimate fits, as a function of what
@@ -170,13 +179,14 @@ func (m *massModel) assumes(t *estimate.Task) []string {
 		"isothermal": "singular isothermal sphere", "cored-isothermal": "isothermal sphere with a core",
 	}[m.kind]
 	lines := []string{fmt.Sprintf("halo: %s, with an infinite line of sight", name)}
-	switch m.kind {
-	case "cored-isothermal":
-		lines = append(lines, stated(t, coreSetting))
-	case "nfw", "hernquist":
-		lines = append(lines, stated(t, concentrationSetting))
-	case "einasto":
-		lines = append(lines, stated(t, concentrationSetting), stated(t, alphaSetting))
+	for _, s := range []method.Setting{concentrationSetting, alphaSetting, coreSetting} {
+		v, byDefault := t.Settings[s.Name], s.Default
+		switch {
+		case slices.Contains(uses[m.kind], s.Name):
+			lines = append(lines, stated(t, s))
+		case v.Nuisance != "" || v.Relation != byDefault.Relation || v.Prior != byDefault.Prior:
+			lines = append(lines, fmt.Sprintf("%s: not used, this halo has none", s.Name))
+		}
 	}
 	return lines
 }

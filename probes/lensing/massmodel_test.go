@@ -66,6 +66,13 @@ func TestRecoverHaloes(t *testing.T) {
 			t.Errorf("%s has a concentration", x.name)
 		}
 	}
+	// What a halo does not have is not used, and said.
+	odd := defaults(tangentialShear)
+	odd["halo"], odd["concentration"] = method.Word("isothermal"), method.Exactly(4)
+	_, d := fitted(t, profileOf(t, halo.NewIsothermal(mass, threshold), 0.01), odd)
+	if a := strings.Join(d.Assumes, "\n"); !strings.Contains(a, "concentration: not used") {
+		t.Errorf("assumes %q", a)
+	}
 	// The index of an Einasto halo can be drawn.
 	settings := defaults(tangentialShear)
 	settings["halo"] = method.Word("einasto")
@@ -74,7 +81,7 @@ func TestRecoverHaloes(t *testing.T) {
 	settings["mass"] = method.Exactly(mass)
 	task := profileOf(t, halo.NewEinasto(mass, 4.5, 0.21, threshold), 0.0005)
 	task.Sampling.Draws = 200
-	_, d := fitted(t, task, settings)
+	_, d = fitted(t, task, settings)
 	if q := infer.Percentiles(parameter(t, d, "alpha"), 2.5, 97.5); !(q[0] < 0.21 && 0.21 < q[1]) || q[1]-q[0] > 0.1 {
 		t.Errorf("alpha %.4g", q)
 	}

@@ -34,7 +34,7 @@ func readProfile(t *estimate.Task) (*Profile, error) {
 	}
 	for i, b := range p.Bins {
 		if math.Abs(b.Shear) > 1 || math.Abs(b.Cross) > 1 {
-			return nil, fmt.Errorf("%s: row %d: a reduced shear above 1; it is a mean ellipticity, which lies below", table.File, table.Rows[i])
+			return nil, fmt.Errorf("%s, row %d: a reduced shear above 1; it is a mean ellipticity, which lies below", table.File, table.Rows[i])
 		}
 	}
 	if c := t.Tables["profile.covariance"]; c != nil {
@@ -55,9 +55,9 @@ func readRadii(t *estimate.Task, table *catalogue.Table, bins []Bin) error {
 			b.Inner, b.Outer, b.Mean = at[i], at[i], at[i]
 			switch {
 			case !(at[i] > 0):
-				return fmt.Errorf("%s: row %d: radius %.4g kpc is not above zero", table.File, row, at[i])
+				return fmt.Errorf("%s, row %d: radius %.4g kpc is not above zero", table.File, row, at[i])
 			case i > 0 && !(at[i] > at[i-1]):
-				return fmt.Errorf("%s: row %d: radius %.4g kpc does not lie beyond the row before (%.4g kpc); sort the rows by radius", table.File, row, at[i], at[i-1])
+				return fmt.Errorf("%s, row %d: radius %.4g kpc does not lie beyond the row before (%.4g kpc); sort the rows by radius", table.File, row, at[i], at[i-1])
 			}
 			b.Nodes = []Node{{at[i], 1}}
 			continue
@@ -65,13 +65,13 @@ func readRadii(t *estimate.Task, table *catalogue.Table, bins []Bin) error {
 		b.Inner, b.Outer = inner[i], outer[i]
 		switch {
 		case !(b.Inner >= 0):
-			return fmt.Errorf("%s: row %d: the inner radius %.4g kpc is below zero", table.File, row, b.Inner)
+			return fmt.Errorf("%s, row %d: the inner radius %.4g kpc is below zero", table.File, row, b.Inner)
 		case !(b.Outer > b.Inner):
-			return fmt.Errorf("%s: row %d: the outer radius %.4g kpc does not lie beyond the inner one (%.4g kpc)", table.File, row, b.Outer, b.Inner)
+			return fmt.Errorf("%s, row %d: the outer radius %.4g kpc does not lie beyond the inner one (%.4g kpc)", table.File, row, b.Outer, b.Inner)
 		case i > 0 && b.Inner < bins[i-1].Inner:
-			return fmt.Errorf("%s: row %d: the bin begins inside the row before; sort the rows by radius", table.File, row)
+			return fmt.Errorf("%s, row %d: the bin begins inside the row before; sort the rows by radius", table.File, row)
 		case i > 0 && b.Inner < bins[i-1].Outer*(1-1e-6): // edges are quoted rounded
-			return fmt.Errorf("%s: row %d: the bin begins at %.5g kpc, where the row before ends at %.5g kpc: the bins overlap", table.File, row, b.Inner, bins[i-1].Outer)
+			return fmt.Errorf("%s, row %d: the bin begins at %.5g kpc, where the row before ends at %.5g kpc: the bins overlap", table.File, row, b.Inner, bins[i-1].Outer)
 		}
 		b.Nodes = areaNodes(b.Inner, b.Outer, areaCount(b.Inner, b.Outer))
 		// The mean radius of an evenly filled annulus is ⅔ (b³−a³)/(b²−a²).
@@ -97,8 +97,14 @@ func readErrors(table *catalogue.Table, bins []Bin) error {
 		default:
 			return fmt.Errorf("%s: the profile has no errors: give `error`, or `minus` and `plus`, or `low` and `high`", table.File)
 		}
-		if !(b.Minus > 0 && b.Plus > 0) {
-			return fmt.Errorf("%s: row %d: the errors −%g +%g about %g must both be above zero", table.File, table.Rows[i], b.Minus, b.Plus, b.Shear)
+		row := table.Rows[i]
+		switch {
+		case low != nil && !(b.Minus > 0 && b.Plus > 0):
+			return fmt.Errorf("%s, row %d: the shear %g does not lie between its bounds `low` = %g and `high` = %g", table.File, row, b.Shear, low[i], high[i])
+		case !(b.Minus > 0):
+			return fmt.Errorf("%s, row %d: the error below, %g, is not above zero", table.File, row, b.Minus)
+		case !(b.Plus > 0):
+			return fmt.Errorf("%s, row %d: the error above, %g, is not above zero", table.File, row, b.Plus)
 		}
 	}
 	return nil

@@ -86,7 +86,7 @@ func TestReadCovariance(t *testing.T) {
 	columns[4].Values = []float64{1, 0, 0, 0, 4e-4}
 	task.Tables["profile.covariance"] = table("matrix.csv", columns...)
 	_, err = reduce(context.Background(), task)
-	refused(t, "not symmetric", err, "matrix.csv: row 5", "the other way round")
+	refused(t, "not symmetric", err, "matrix.csv, row 5", "the other way round")
 
 	m, err := newMeasure(p)
 	if err != nil {
@@ -139,14 +139,19 @@ func TestBadProfiles(t *testing.T) {
 		spoil func(*estimate.Task)
 		says  []string
 	}{
-		{"negative error", good, spoil("error", 3, -0.02), []string{"shear.csv: row 3", "errors"}},
-		{"error of zero", good, spoil("error", 5, 0), []string{"shear.csv: row 5"}},
+		{"negative error", good, spoil("error", 3, -0.02), []string{"shear.csv, row 3", "error below, -0.02"}},
+		{"bounds about nothing", five("low", 0.1, 0.1, 0.2, 0, 0), func(k *estimate.Task) {
+			p := k.Tables["profile"]
+			p.Columns = append(p.Columns, five("high", 0.3, 0.3, 0.3, 0.1, 0.1))
+		}, []string{"shear.csv, row 3", "`low` = 0.2"}},
+		{"bins for a profile", good, func(k *estimate.Task) { k.Blocks["bins"] = logBins(1, 2, 3) }, []string{"bins"}},
+		{"error of zero", good, spoil("error", 5, 0), []string{"shear.csv, row 5"}},
 		{"no errors", five("cross", 0, 0, 0, 0, 0), func(*estimate.Task) {}, []string{"shear.csv", "no errors"}},
-		{"shear above 1", good, spoil("value", 1, 1.4), []string{"shear.csv: row 1", "above 1"}},
-		{"unsorted", good, func(k *estimate.Task) { spoil("inner", 3, 50)(k); spoil("outer", 3, 60)(k) }, []string{"shear.csv: row 3", "sort"}},
-		{"overlapping", good, spoil("inner", 3, 390), []string{"shear.csv: row 3", "390", "400", "overlap"}},
-		{"inside out", good, spoil("outer", 2, 150), []string{"shear.csv: row 2", "outer"}},
-		{"below zero", good, spoil("inner", 1, -3), []string{"shear.csv: row 1", "below zero"}},
+		{"shear above 1", good, spoil("value", 1, 1.4), []string{"shear.csv, row 1", "above 1"}},
+		{"unsorted", good, func(k *estimate.Task) { spoil("inner", 3, 50)(k); spoil("outer", 3, 60)(k) }, []string{"shear.csv, row 3", "sort"}},
+		{"overlapping", good, spoil("inner", 3, 390), []string{"shear.csv, row 3", "390", "400", "overlap"}},
+		{"inside out", good, spoil("outer", 2, 150), []string{"shear.csv, row 2", "outer"}},
+		{"below zero", good, spoil("inner", 1, -3), []string{"shear.csv, row 1", "below zero"}},
 		{"source in front", good, func(k *estimate.Task) { k.Blocks["profile"]["source_redshift"] = method.Exactly(0.2) }, []string{"redshift 0.2 lie in front of the lens at redshift 0.25"}},
 		{"source at the lens", good, func(k *estimate.Task) { k.Blocks["profile"]["source_redshift"] = method.Exactly(0.25) }, []string{"in front"}},
 		{"no source", good, func(k *estimate.Task) { delete(k.Blocks["profile"], "source_redshift") }, []string{"source_redshift"}},
@@ -164,20 +169,20 @@ func TestBadProfiles(t *testing.T) {
 		{"sources of negative weight", good, func(k *estimate.Task) {
 			delete(k.Blocks["profile"], "source_redshift")
 			k.Tables["profile.sources"] = table("nz.csv", column("redshift", "", 0.1, 2), column("weight", "", 1, -1))
-		}, []string{"nz.csv: row 2", "below zero"}},
+		}, []string{"nz.csv, row 2", "below zero"}},
 		{"source of negative redshift", good, func(k *estimate.Task) {
 			delete(k.Blocks["profile"], "source_redshift")
 			k.Tables["profile.sources"] = table("nz.csv", column("redshift", "", -1, 2))
-		}, []string{"nz.csv: row 1", "-1"}},
+		}, []string{"nz.csv, row 1", "-1"}},
 		{"covariance of a sixth bin", good, func(k *estimate.Task) {
 			k.Tables["profile.covariance"] = table("cov.csv", column("first", "", 1, 6), column("second", "", 1, 6), column("value", "", 1, 1))
-		}, []string{"cov.csv: row 2", "1 to 5"}},
+		}, []string{"cov.csv, row 2", "1 to 5"}},
 		{"covariance of half a bin", good, func(k *estimate.Task) {
 			k.Tables["profile.covariance"] = table("cov.csv", column("first", "", 1.5), column("second", "", 1), column("value", "", 1))
-		}, []string{"cov.csv: row 1"}},
+		}, []string{"cov.csv, row 1"}},
 		{"covariance that contradicts itself", good, func(k *estimate.Task) {
 			k.Tables["profile.covariance"] = table("cov.csv", column("first", "", 1, 2), column("second", "", 2, 1), column("value", "", 1, 2))
-		}, []string{"cov.csv: row 2", "earlier row"}},
+		}, []string{"cov.csv, row 2", "earlier row"}},
 		{"covariance not positive definite", good, func(k *estimate.Task) {
 			k.Tables["profile.covariance"] = table("cov.csv", column("first", "", 1, 2, 3, 4, 5, 1), column("second", "", 1, 2, 3, 4, 5, 2), column("value", "", 1, 1, 1, 1, 1, 3))
 		}, []string{"cov.csv", "positive definite", "eigenvalue is -2"}},

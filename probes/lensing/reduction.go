@@ -29,6 +29,9 @@ func reduce(ctx context.Context, t *estimate.Task) (*Profile, error) {
 	case catalogued:
 		return reduceGalaxies(ctx, t)
 	case published:
+		if _, binned := t.Blocks["bins"]; binned {
+			return nil, fmt.Errorf("`bins` gather `galaxies`; a `profile` has bins of its own")
+		}
 		return readProfile(t)
 	}
 	return nil, fmt.Errorf("there is no shear: give `galaxies` and `bins`, or `profile`")

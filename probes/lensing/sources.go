@@ -36,9 +36,9 @@ func sourceEfficiency(t *estimate.Task, block string) (beta, beta2 float64, err 
 	for i := range z {
 		switch {
 		case !(z[i] >= 0 && z[i] < farthest):
-			return 0, 0, fmt.Errorf("%s: row %d: redshift %g", table.File, table.Rows[i], z[i])
+			return 0, 0, fmt.Errorf("%s, row %d: redshift %g", table.File, table.Rows[i], z[i])
 		case !(w[i] >= 0):
-			return 0, 0, fmt.Errorf("%s: row %d: weight %g is below zero", table.File, table.Rows[i], w[i])
+			return 0, 0, fmt.Errorf("%s, row %d: weight %g is below zero", table.File, table.Rows[i], w[i])
 		}
 		total += w[i]
 		if z[i] > lens {
