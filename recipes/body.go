@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"slices"
 	"sort"
+	"strings"
 
 	"github.com/hashicorp/hcl/v2"
 	"github.com/hashicorp/hcl/v2/hclsyntax"
@@ -120,8 +121,10 @@ func (l *loader) name(b *hclsyntax.Block, example string) string {
 		p.at = b.LabelRanges[0]
 		p.what = fmt.Sprintf("%q cannot be referred to", b.Labels[0])
 		p.why = "A name begins with a letter and goes on with letters, digits, _ and -."
-		if b.Labels[0] != "" && hclsyntax.ValidIdentifier("a"+b.Labels[0]) {
-			p.write = fmt.Sprintf("Put a letter before it, like %q.", example+"_"+b.Labels[0])
+		if plain := strings.Join(strings.Fields(b.Labels[0]), "_"); hclsyntax.ValidIdentifier(plain) {
+			p.write = fmt.Sprintf("Write %q.", plain)
+		} else if plain != "" && hclsyntax.ValidIdentifier("a"+plain) {
+			p.write = fmt.Sprintf("Put a letter before it, like %q.", example+"_"+plain)
 		}
 	default:
 		return b.Labels[0]

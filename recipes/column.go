@@ -81,7 +81,11 @@ func (l *loader) column(t term, c method.Column) (Column, bool) {
 	name := t.items[0]
 	ok := name.kind == textTerm && name.text != ""
 	if !ok && name.kind != badTerm {
-		l.add(problem{at: name.at, what: "the name of a column is a text in quotes", write: "Write " + columnSample(c) + "."})
+		write := "Write " + columnSample(c) + "."
+		if name.word() != "" {
+			write = fmt.Sprintf("Write %q.", name.word())
+		}
+		l.add(problem{at: name.at, what: "the name of a column is a text in quotes", write: write})
 	}
 	out.Name = name.text
 	if len(t.items) == 2 {

@@ -46,9 +46,9 @@
 //
 // # Numbers and quantities
 //
-// A pure number is written plainly: 0.3, -2, 1.5e14. Numbers may be added,
-// subtracted, multiplied and divided, as in 1/1.05; they are exact decimals
-// until they are rounded once to double precision.
+// A pure number is written plainly: 0.3, -2, 1.5e14. Numbers may be multiplied
+// and divided, as in 1/1.05; they are exact decimals until they are rounded once
+// to double precision.
 //
 // A quantity with a unit is a text in quotes: a number, perhaps an error, and
 // the unit.
@@ -286,7 +286,8 @@
 // projected = true says that the mass is that in a cylinder along the line of
 // sight, within a radius. The cosmology it was quoted in is the recipe's when
 // silent. concentration, an assumption like any other, is that of the halo along
-// which the mass is carried to other radii. source is printed with it.
+// which the mass is carried to other radii; elongation and intrinsic_scatter are
+// as in an estimate. source is printed with it.
 //
 //	reported "earlier_shear" {
 //	  probe         = "lensing"

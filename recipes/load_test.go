@@ -202,9 +202,13 @@ func TestValues(t *testing.T) {
 		{method.Number, "", false, `"12 %"`, exact(0.12, "")},
 		{method.Number, "", false, `-0`, exact(0, "")},
 		{method.Number, "", false, `0 * -1`, exact(0, "")},
-		{method.Number, "", false, `0.1 + 0.2`, exact(0.3, "")}, // decimals, not binary fractions
-		{method.Number, "", false, `(1 - 0.9) / 0.1`, exact(1, "")},
+		{method.Number, "", false, `0.1 * 3`, exact(0.3, "")}, // decimals: binary fractions give 0.30000000000000004
+		{method.Number, "", false, `-(1 / 0.1) / 0.1`, exact(-100, "")},
 		{method.Number, "", false, `1e400 / 1e399`, method.Value{}},
+		{method.Number, "", false, `1e200 * 1e200`, method.Value{}},
+		{method.Number, "", false, `0.30 +- 0.02`, method.Value{}}, // not 0.28
+		{method.Number, "", false, `0.30 + 0.02 - 0.03`, method.Value{}},
+		{method.Number, "", false, `0.30 ± 0.02`, method.Value{}},
 		{method.Number, "", false, `1.5e3`, exact(1500, "")},
 		{method.Number, "", false, `normal(0.0, 0.02)`, drawn(prior.Normal(0, 0.02))},
 		{method.Number, "", false, `half_normal(0.1)`, drawn(prior.HalfNormal(0.1))},

@@ -52,14 +52,14 @@ var cosmologySettings = []method.Setting{
 
 // cosmology reads the cosmology block of the recipe.
 func (l *loader) cosmology(b *hclsyntax.Block) {
-	if c, ok := l.background1(b); ok {
+	if c, ok := l.readCosmology(b); ok {
 		l.recipe.Cosmology = c
 		l.background = &l.recipe.Cosmology
 	}
 }
 
-// background1 reads one cosmology block.
-func (l *loader) background1(b *hclsyntax.Block) (Cosmology, bool) {
+// readCosmology reads one cosmology block.
+func (l *loader) readCosmology(b *hclsyntax.Block) (Cosmology, bool) {
 	c := Cosmology{W0: -1, Range: b.DefRange()}
 	l.check(b.Body, vocabulary{block: "cosmology", settings: settingNames(cosmologySettings)})
 	ok := l.require(b.Body, b.DefRange(), "cosmology", "hubble_constant", "", "Write hubble_constant = \"70 km/s/Mpc\".")

@@ -55,7 +55,7 @@ func (l *loader) reportedBlock(b *hclsyntax.Block) {
 			continue
 		}
 		l.background = nil
-		if c, ok := l.background1(inner); ok {
+		if c, ok := l.readCosmology(inner); ok {
 			out.Cosmology = &c
 			l.background = &c
 		}

@@ -119,7 +119,7 @@ func (c *compiler) parse() hclsyntax.Expression {
 
 // badWords reports spellings of operators that other languages have.
 func (c *compiler) badWords(tokens hclsyntax.Tokens) (found bool) {
-	instead := map[string]string{"and": "&&", "AND": "&&", "or": "||", "OR": "||", "not": "!", "NOT": "!", "=": "==", "&": "&&", "|": "||", "^": "", "~": "!", "<>": "!=", "%": ""}
+	instead := map[string]string{"and": "&&", "AND": "&&", "or": "||", "OR": "||", "not": "!", "NOT": "!", "=": "==", "&": "&&", "|": "||", "^": "", "~": "!", "<>": "!=", "=>": ">=", "%": "", "≤": "<=", "≥": ">=", "≠": "!=", "−": "-", "×": "*"}
 	for i, token := range tokens {
 		text := string(token.Bytes)
 		operator, known := instead[text]

@@ -66,9 +66,7 @@ func (r *report) readSource(name string, from *hcl.Range) *source {
 	if !r.shallow(name, content) {
 		return nil
 	}
-	file, diags := hclsyntax.ParseConfig(content, name, hcl.InitialPos)
-	r.syntax(name, diags)
-	return &source{name: name, body: file.Body.(*hclsyntax.Body)}
+	return &source{name: name, body: r.parse(name, content)}
 }
 
 // readBounded reads a file that must not be large.

@@ -168,7 +168,9 @@ func (r *report) inRange(f *big.Float, at hcl.Range) bool {
 	return false
 }
 
-// arithmetic computes with plain numbers, exactly.
+// arithmetic multiplies and divides plain numbers, exactly. Sums are refused:
+// 0.30 +- 0.02 and 6.1 +0.9 -0.8 without their quotes are sums, and not what was
+// meant.
 func (r *report) arithmetic(e hclsyntax.Expression) term {
 	bad := term{at: e.Range()}
 	refuse := func(what, write string) term {
@@ -190,19 +192,18 @@ func (r *report) arithmetic(e hclsyntax.Expression) term {
 		}
 		return refuse(fmt.Sprintf("the sign stands before %s", t.describe()), "Only numbers take a sign; in a quantity it stands inside the quotes: \"-2 arcmin\".")
 	case *hclsyntax.BinaryOpExpr:
+		if e.Op == hclsyntax.OpAdd || e.Op == hclsyntax.OpSubtract {
+			return refuse("a recipe adds nothing up", "Write the result. If an error is meant, write it in quotes, like \"0.30 +- 0.02\".")
+		}
 		a, b := r.term(e.LHS), r.term(e.RHS)
 		if a.kind == badTerm || b.kind == badTerm {
 			return bad
 		}
 		if a.kind != numberTerm || b.kind != numberTerm {
-			return refuse("only plain numbers can be computed with", "Write the result out, with its unit in quotes.")
+			return refuse("only plain numbers can be multiplied and divided", "Write the result, with its unit in quotes.")
 		}
 		x := new(big.Rat)
 		switch e.Op {
-		case hclsyntax.OpAdd:
-			x.Add(a.number, b.number)
-		case hclsyntax.OpSubtract:
-			x.Sub(a.number, b.number)
 		case hclsyntax.OpMultiply:
 			x.Mul(a.number, b.number)
 		case hclsyntax.OpDivide:

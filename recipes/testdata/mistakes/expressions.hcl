@@ -17,3 +17,9 @@ dynamics "sigma" {
   dispersion { value = x[0] }
   estimate "scaling" { method = 3 }
 }
+reported "sums" {
+  probe         = "xray"
+  mass          = "6.1" + "0.9"
+  overdensity   = 5 * "100"
+  concentration = 4.5 +- 0.3
+}
