@@ -224,7 +224,9 @@ func (p *Plan) reported(m recipes.Reported) error {
 			return err
 		}
 	}
-	t := &estimate.Task{Name: name, Object: p.object, Cosmology: p.background, Settings: p.lengths(m.Settings, reported.Settings())}
+	// A radius quoted as an angle stays one: it is a length in the cosmology it was
+	// quoted in, not in the recipe's.
+	t := &estimate.Task{Name: name, Object: p.object, Cosmology: p.background, Settings: m.Settings}
 	n := engine.Node{ID: name, Kind: "reported", Version: reported.Version, Where: place(m.Range)}
 	n.Params = append(p.backgroundFacts(), p.samplingFacts()...)
 	n.Params = append(n.Params, settingsFacts("reported", t.Settings)...)

@@ -32,7 +32,7 @@ func (p *Plan) tableNode(id string, d recipes.Data, declared method.Block) engin
 	if d.Select != nil {
 		n.Params = append(n.Params, fmt.Sprintf("select = %q", d.Select.Text()))
 		if names(d.Select, separationColumn) {
-			n.Params = append(n.Params, "centre = "+exact(p.object.RA)+" "+exact(p.object.Dec))
+			n.Params = append(n.Params, p.backgroundFacts()...)
 		}
 	}
 	n.Run = func(_ context.Context, job engine.Job) (engine.Output, error) {
@@ -78,7 +78,8 @@ func (p *Plan) read(path string, d recipes.Data, want []catalogue.Want) (*catalo
 	if err != nil {
 		return nil, err
 	}
-	condition, err := d.Select.Bind(func(column string) string {
+	distance := p.background.AngularDiameter(p.object.Redshift)
+	condition, err := d.Select.WithDistance(distance).Bind(func(column string) string {
 		if column == separationColumn {
 			return "arcmin"
 		}

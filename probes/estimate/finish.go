@@ -76,6 +76,7 @@ func (t *Task) Finish(f Fit) (*infer.Draws, error) {
 	if err := t.restate(d, shifted); err != nil {
 		return nil, err
 	}
+	d.Warnings = append(d.Warnings, piledUp(f)...)
 	d.Assumes = append(t.massPrior(), f.Assumes...)
 	d.Warnings = append(d.Warnings, f.Sample.Warnings...)
 	d.Warnings = append(d.Warnings, f.Warnings...)
@@ -174,6 +175,33 @@ func (t *Task) quality(d *infer.Draws, f Fit) {
 	if m := infer.Percentiles(p.Values, 16, 50, 84); m[1] < 5*(m[2]-m[0])/2 {
 		d.Warnings = append(d.Warnings, fmt.Sprintf("the mass is measured at %.1f times its error, below 5: the prior on the mass matters", 2*m[1]/(m[2]-m[0])))
 	}
+}
+
+// piledUp names the parameters that the data push against an end of their prior,
+// a third of the draws or more within its outer hundredth: such a value is the
+// prior's, not the data's.
+func piledUp(f Fit) []string {
+	var out []string
+	for j, free := range f.Parameters.Free {
+		low, high := 0, 0
+		for _, theta := range f.Sample.Values {
+			switch u := free.Prior.CDF(theta[j]); {
+			case u < 0.01:
+				low++
+			case u > 0.99:
+				high++
+			}
+		}
+		for _, end := range []struct {
+			name  string
+			count int
+		}{{"lower", low}, {"upper", high}} {
+			if 3*end.count > len(f.Sample.Values) {
+				out = append(out, fmt.Sprintf("%s piles up at the %s end of its prior %s: the prior, not the data, decides it", free.Name, end.name, free.Prior))
+			}
+		}
+	}
+	return out
 }
 
 func (t *Task) massPrior() []string {

@@ -49,7 +49,7 @@ func Suggest(text string) string {
 	}
 	best, least := "", allowed+1
 	for _, unit := range written {
-		if d := levenshtein.Distance(text, unit, nil); d < least && len(unit) > 2 {
+		if d := levenshtein.Distance(plain, strings.ToLower(unit), nil); d < least && len(unit) > 2 {
 			best, least = unit, d
 		}
 	}
