@@ -24,9 +24,8 @@ import (
 // to infinity (η = 1).
 type atmosphere struct {
 	grid *radial
-	// base is ln of the density over the reference at the nodes, modes what the
-	// drawn directions of the density's errors add to it.
-	base  []float64
+	// modes is what the directions of the density's errors add to ln of the
+	// density over the reference, at the nodes.
 	modes [][]float64
 	// gravity integrates the reference density over the nodes' (n/n̂)(M/r).
 	gravity [][points]float64
@@ -58,7 +57,6 @@ func newAtmosphere(gas *Gas, s *Spectra, density float64) *atmosphere {
 		a.lnRef = append(a.lnRef, gas.LnElectrons(r))
 		a.ref = append(a.ref, reference(r))
 	}
-	a.base = make([]float64, len(g.r))
 	a.gravity = g.steps(func(r float64) float64 { return reference(r) / r })
 	for i := range s.Value {
 		weight := g.shell
@@ -106,16 +104,10 @@ func (a *atmosphere) newState() *state {
 // outer pressure η and the density's moves z. It reports false when no
 // temperature is positive and finite.
 func (a *atmosphere) solve(s *state, strength, eta float64, z []float64) bool {
-	copy(s.ratio, a.base)
-	for k, zk := range z {
-		for j, phi := range a.modes[k] {
-			s.ratio[j] += zk * phi
-		}
-	}
+	a.move(s, z)
 	n := len(s.ratio)
-	for j, x := range s.ratio {
-		s.ratio[j] = math.Exp(x)
-		s.quotient[j] = s.ratio[j] * s.mass[j] / a.grid.r[j]
+	for j, ratio := range s.ratio {
+		s.quotient[j] = ratio * s.mass[j] / a.grid.r[j]
 	}
 	strength /= constants.HydrostaticMass
 	last := n - 1
@@ -139,17 +131,26 @@ func (a *atmosphere) solve(s *state, strength, eta float64, z []float64) bool {
 		} else {
 			s.pressure[j] = eta * w
 		}
-		emission := s.ratio[j] * s.ratio[j]
-		kT := s.pressure[j] / (s.ratio[j] * a.ref[j])
-		if !(kT > 0) || math.IsInf(kT, 1) {
+		s.kT[j] = s.pressure[j] / (s.ratio[j] * a.ref[j])
+		if !(s.kT[j] > 0) || math.IsInf(s.kT[j], 1) {
 			return false
 		}
-		s.kT[j] = kT
-		s.hot[j] = emission * math.Sqrt(math.Sqrt(kT))
-		s.cold[j] = s.hot[j] / kT
 	}
 	a.look(s)
 	return true
+}
+
+// move sets the density to the moves z.
+func (a *atmosphere) move(s *state, z []float64) {
+	clear(s.ratio)
+	for k, zk := range z {
+		for j, phi := range a.modes[k] {
+			s.ratio[j] += zk * phi
+		}
+	}
+	for j, x := range s.ratio {
+		s.ratio[j] = math.Exp(x)
+	}
 }
 
 // beyond is ∫ n_e M/r² dr beyond the last node: with x = ln r and F the ln of
@@ -171,6 +172,10 @@ func (a *atmosphere) beyond(s *state) float64 {
 // that makes the average the temperature a spectrum yields (Mazzotta et al.
 // 2004).
 func (a *atmosphere) look(s *state) {
+	for j, kT := range s.kT {
+		s.hot[j] = s.ratio[j] * s.ratio[j] * math.Sqrt(math.Sqrt(kT))
+		s.cold[j] = s.hot[j] / kT
+	}
 	for i, b := range a.bins {
 		var hot, cold float64
 		h, c := s.hot[b.first:], s.cold[b.first:]

@@ -118,6 +118,7 @@ const impossible = 1e6
 func (f *fit) best(scatter float64, starts ...float64) (bestFit, error) {
 	n, s, free := f.spectra.Len(), f.air.newState(), f.parameters.Free
 	theta := make([]float64, len(free)+f.moves)
+	out := make([]float64, n+len(theta))
 	residuals := func(x, out []float64) {
 		for i, p := range free {
 			theta[i] = p.Prior.FromScore(x[i])
@@ -133,20 +134,20 @@ func (f *fit) best(scatter float64, starts ...float64) (bestFit, error) {
 		f.spectra.pulls(s.Bins, f.scale.Of(theta), scatter, out[:n])
 	}
 	var best []float64
-	least := impossible * impossible
+	least := math.Inf(1)
 	for _, start := range starts {
 		x := make([]float64, len(theta))
 		if len(x) > 0 {
 			x[0] = start
 		}
-		if x, sum, _ := leastSquares(residuals, n+len(x), x); sum < least {
+		x, sum, _ := leastSquares(residuals, n+len(x), x)
+		if residuals(x, out); sum < least && out[0] != impossible {
 			best, least = x, sum
 		}
 	}
 	if best == nil {
 		return bestFit{}, f.task.Errorf("no model allowed by the priors can hold this gas: its weight beyond the data is infinite, or no temperature comes out positive")
 	}
-	out := make([]float64, n+len(best))
 	residuals(best, out)
 	b := bestFit{theta: theta, dof: max(n-f.fitted, 0), pValue: 1}
 	b.chi2 = floats.Dot(out[:n], out[:n]) + floats.Dot(best[f.fitted:], best[f.fitted:])

@@ -39,22 +39,27 @@ func (g *Gas) LnElectrons(r float64) float64 { return g.Form.lnElectrons(g.Param
 
 // Slope returns d ln n_e / d ln r at r kpc and its standard deviation.
 func (g *Gas) Slope(r float64) (slope, sd float64) {
-	const h = 1e-3
 	var variance float64
 	for k := range g.Moves {
-		d := (g.Mode(k, r*math.Exp(h)) - g.Mode(k, r*math.Exp(-h))) / (2 * h)
+		d := g.ModeSlope(k, r)
 		variance += d * d
 	}
 	return g.Form.slope(g.Parameters, r), math.Sqrt(variance)
 }
 
 // Mode returns φ_k at r kpc.
-func (g *Gas) Mode(k int, r float64) float64 {
+func (g *Gas) Mode(k int, r float64) float64 { return g.along(k, g.Form.lnElectrons, r) }
+
+// ModeSlope returns d φ_k / d ln r at r kpc.
+func (g *Gas) ModeSlope(k int, r float64) float64 { return g.along(k, g.Form.slope, r) }
+
+// along is the derivative of a function of the parameters along Moves[k].
+func (g *Gas) along(k int, f func(p []float64, r float64) float64, r float64) float64 {
 	const h = 1e-3
 	at := func(h float64) float64 {
 		p := append([]float64(nil), g.Parameters...)
 		floats.AddScaled(p, h, g.Moves[k])
-		return g.Form.lnElectrons(p, r)
+		return f(p, r)
 	}
 	return (at(h) - at(-h)) / (2 * h)
 }

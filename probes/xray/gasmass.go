@@ -35,7 +35,7 @@ func newGasMass(gas *Gas, air *atmosphere) *gasMass {
 
 // move sets the density to the moves z.
 func (m *gasMass) move(z []float64) {
-	copy(m.ratio, m.air.base)
+	clear(m.ratio)
 	for k, zk := range z {
 		floats.AddScaled(m.ratio, zk, m.air.modes[k])
 	}

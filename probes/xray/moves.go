@@ -15,6 +15,7 @@ const leastInfluence = 0.2
 
 // layModes lays the directions of the density's errors on the nodes.
 func (f *fit) layModes() {
+	f.air.modes = nil
 	for k := range f.gas.Moves {
 		phi := make([]float64, len(f.air.grid.r))
 		for j, r := range f.air.grid.r {
@@ -66,12 +67,14 @@ func (f *fit) turn(b bestFit) {
 	svd.VTo(&v)
 	turned := make([][]float64, f.moves)
 	for l := range turned {
-		turned[l] = make([]float64, len(f.air.grid.r))
-		for k, old := range f.air.modes {
+		turned[l] = make([]float64, len(f.gas.Parameters))
+		for k, old := range f.gas.Moves {
 			floats.AddScaled(turned[l], v.At(k, l), old)
 		}
 	}
-	f.air.modes, f.moves = turned, 0
+	f.gas.Moves = turned
+	f.layModes()
+	f.moves = 0
 	for _, influence := range svd.Values(nil) {
 		if influence < leastInfluence {
 			break

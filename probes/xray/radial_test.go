@@ -93,8 +93,7 @@ func TestProjectionReference(t *testing.T) {
 	a := newAtmosphere(gas, s, nodesPerEfold)
 	st := a.newState()
 	for j, r := range a.grid.r {
-		st.hot[j] = math.Pow(ref.kT(r), 0.25)
-		st.cold[j] = math.Pow(ref.kT(r), -0.75)
+		st.ratio[j], st.kT[j] = 1, ref.kT(r)
 	}
 	a.look(st)
 	for i, want := range ref.Annuli {
