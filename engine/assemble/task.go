@@ -35,9 +35,14 @@ func cosmologyFact(c *cosmology.Cosmology) string {
 // exact renders a number for a node's key.
 var exact = method.Digits
 
+// samplingFacts are the facts that a node which draws depends on: how many
+// draws, from which seed, and the versions of the code all of them share.
 func (p *Plan) samplingFacts() []string {
 	s := p.Recipe.Sampling
-	return []string{fmt.Sprintf("draws = %d", s.Draws), fmt.Sprintf("seed = %d", s.Seed)}
+	return []string{
+		fmt.Sprintf("draws = %d", s.Draws), fmt.Sprintf("seed = %d", s.Seed),
+		fmt.Sprintf("estimate_version = %d", estimate.Version), fmt.Sprintf("infer_version = %d", infer.Version),
+	}
 }
 
 // settingsFacts renders the settings of a named block.
