@@ -6,6 +6,7 @@ import (
 
 	"steelyard/probes/catalogue"
 	"steelyard/probes/infer"
+	"steelyard/probes/prior"
 )
 
 // Fit is what an estimator hands over once it has drawn its parameters.
@@ -165,7 +166,7 @@ func (t *Task) quality(d *infer.Draws, f Fit) {
 	if f.Dof > 0 {
 		d.Quality.PValue = infer.ChiSquareP(f.Chi2, f.Dof)
 		if d.Quality.PValue < 1e-3 {
-			d.Warnings = append(d.Warnings, fmt.Sprintf("poorly fitted: χ² = %.1f for %d degrees of freedom (p = %.1g); its error does not cover what the model misses", f.Chi2, f.Dof, d.Quality.PValue))
+			d.Warnings = append(d.Warnings, fmt.Sprintf("poorly fitted: χ² = %.1f for %d degrees of freedom (p %s); its error does not cover what the model misses", f.Chi2, f.Dof, tiny(d.Quality.PValue)))
 		}
 	}
 	p := d.Parameter("mass_200c")
@@ -177,12 +178,23 @@ func (t *Task) quality(d *infer.Draws, f Fit) {
 	}
 }
 
+// tiny writes a small probability, which may have vanished altogether.
+func tiny(p float64) string {
+	if p < 1e-99 {
+		return "< 1e-99"
+	}
+	return fmt.Sprintf("= %.1g", p)
+}
+
 // piledUp names the parameters that the data push against an end of their prior,
 // a third of the draws or more within its outer hundredth: such a value is the
 // prior's, not the data's.
 func piledUp(f Fit) []string {
 	var out []string
 	for j, free := range f.Parameters.Free {
+		if free.Prior.Kind != prior.UniformKind && free.Prior.Kind != prior.LogUniformKind {
+			continue // has no ends to pile up at
+		}
 		low, high := 0, 0
 		for _, theta := range f.Sample.Values {
 			switch u := free.Prior.CDF(theta[j]); {
