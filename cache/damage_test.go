@@ -74,13 +74,16 @@ func mend(t testing.TB, dir string, n int) {
 	}
 	wg.Wait()
 	wantEntries(t, s, 0, n)
+	if _, err := s.Check(t.Context(), true); err != nil { // also what no entry needs
+		t.Fatal(err)
+	}
 	s.Close()
 	s = open(t, dir, Options{})
 	if lost := lostOf(s, n); len(lost) > 0 {
 		t.Fatalf("lost after mending: %v", lost)
 	}
 	if c, err := s.Check(t.Context(), false); err != nil || len(c.Problems) > 0 || c.Records != n {
-		t.Fatalf("after mending: %+v, %v", c, err)
+		t.Fatalf("after mending: %d records, %q, %v", c.Records, c.Problems, err)
 	}
 	wantSilence(t, s)
 }

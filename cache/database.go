@@ -93,12 +93,16 @@ func (s *Store) update(fn func(*bolt.Tx) error) error {
 			return err
 		}
 	}
+	_, missing := os.Stat(s.database())
 	err := s.transact(false, fn)
 	if isDamage(err) {
 		if err := s.rebuild(); err != nil {
 			return err
 		}
 		err = s.transact(false, fn)
+	}
+	if err == nil && missing != nil {
+		err = syncDir(s.dir) // so that the new file itself is there after a power cut
 	}
 	return err
 }
@@ -150,7 +154,12 @@ func (s *Store) checkPages() error {
 		return err
 	}
 	defer file.Close()
-	pages, err := newPageFile(file)
+	data, release, err := contents(file)
+	if err != nil {
+		return err
+	}
+	defer release()
+	pages, err := newPageFile(data)
 	if err == nil {
 		err = pages.check()
 	}

@@ -12,7 +12,7 @@ import (
 
 // bbolt trusts the pages of its file: it follows page numbers, lengths and
 // offsets through unsafe pointers, and a changed byte among them can end the
-// program beyond any recovery. So this file reads the pages by itself, checking
+// program beyond any recovery. So the code here reads the pages by itself, checking
 // every number against its bounds: once before bbolt may open a database in
 // this process, and to save what can be saved of a damaged one.
 //
@@ -35,17 +35,16 @@ const (
 	bucketElement = 0x01
 	noFreeList    = math.MaxUint64
 
-	metaSize      = 64
-	metaMagic     = 0xED0CDAED
-	metaVersion   = 2
-	maxNodeLength = 64 << 20 // more than any value of ours
+	metaSize    = 64
+	metaMagic   = 0xED0CDAED
+	metaVersion = 2
 )
 
 var native = binary.NativeEndian
 
-// pageFile is a bbolt file read page by page.
+// pageFile is the content of a bbolt file.
 type pageFile struct {
-	file     *os.File
+	data     []byte
 	size     int    // of a page
 	pages    uint64 // in use
 	root     uint64 // page of the bucket of buckets
@@ -74,31 +73,26 @@ func parseMeta(page []byte) (m meta, ok bool) {
 
 // newPageFile reads the metas of a file. Of a file that carries none it gives
 // what lies in it, page after page, with an error.
-func newPageFile(file *os.File) (*pageFile, error) {
-	info, err := file.Stat()
-	if err != nil {
-		return nil, err
-	}
-	p := &pageFile{file: file, size: os.Getpagesize()}
+func newPageFile(data []byte) (*pageFile, error) {
+	p := &pageFile{data: data, size: os.Getpagesize()}
 	var best meta
-	first := make([]byte, pageHeader+metaSize)
-	if _, err := file.ReadAt(first, 0); err == nil {
-		if m, ok := parseMeta(first); ok && m.pageSize >= 512 && m.pageSize <= 1<<20 {
+	if len(data) >= pageHeader+metaSize {
+		if m, ok := parseMeta(data); ok && m.pageSize >= 512 && m.pageSize <= 1<<20 {
 			best, p.size = m, int(m.pageSize)
 		}
 	}
-	second := make([]byte, pageHeader+metaSize)
-	if _, err := file.ReadAt(second, int64(p.size)); err == nil {
-		if m, ok := parseMeta(second); ok && int(m.pageSize) == p.size && m.txid >= best.txid {
+	if len(data) >= p.size+pageHeader+metaSize {
+		if m, ok := parseMeta(data[p.size:]); ok && int(m.pageSize) == p.size && m.txid >= best.txid {
 			best = m
 		}
 	}
-	p.root, p.freeList, p.pages = best.root, best.freeList, uint64(info.Size())/uint64(p.size)
+	var err error
+	p.root, p.freeList, p.pages = best.root, best.freeList, uint64(len(data)/p.size)
 	switch {
 	case best.pageSize == 0:
 		err = errors.New("its first pages are damaged")
 	case best.pages > p.pages:
-		err = fmt.Errorf("it is cut short: %d bytes are there of %d", info.Size(), best.pages*uint64(p.size))
+		err = fmt.Errorf("it is cut short: %d bytes are there of %d", len(data), best.pages*uint64(p.size))
 	default:
 		p.pages = best.pages
 	}
@@ -119,27 +113,17 @@ type element struct {
 	child      uint64 // page of a branch's element
 }
 
-// read reads a page and those it goes on for, without believing its elements.
-func (p *pageFile) read(id uint64) (page []byte, err error) {
-	page = make([]byte, p.size)
-	if _, err := p.file.ReadAt(page, int64(id)*int64(p.size)); err != nil {
-		return nil, fmt.Errorf("page %d: %w", id, err)
-	}
+// read gives a page and those it goes on for, without believing its elements.
+func (p *pageFile) read(id uint64) ([]byte, error) {
+	page := p.data[id*uint64(p.size):]
 	more := uint64(native.Uint32(page[12:]))
 	if native.Uint64(page) != id {
 		return nil, fmt.Errorf("page %d carries another number", id)
 	}
-	if id+more >= p.pages || more*uint64(p.size) > maxNodeLength {
+	if id+more >= p.pages {
 		return nil, fmt.Errorf("page %d reaches beyond the end", id)
 	}
-	if more > 0 {
-		rest := make([]byte, int(more)*p.size)
-		if _, err := p.file.ReadAt(rest, int64(id+1)*int64(p.size)); err != nil {
-			return nil, fmt.Errorf("page %d: %w", id, err)
-		}
-		page = append(page, rest...)
-	}
-	return page, nil
+	return page[:(more+1)*uint64(p.size)], nil
 }
 
 // parse reads the elements of a page. Those out of bounds are left out and make
@@ -340,30 +324,31 @@ func (p *pageFile) checkFree() error {
 }
 
 // entries visits every element that looks like an entry of a bucket, whatever
-// else is wrong with the file: first those on pages that belong to the tree,
-// then those on all others, among them older states.
-func (p *pageFile) entries(visit func(key, value []byte) error) error {
+// else is wrong with the file, either on the pages that belong to the tree or on
+// all others.
+func (p *pageFile) entries(live bool, visit func(key, value []byte) error) error {
 	p.reached = make([]bool, p.pages)
 	p.follow(p.root, 0)
-	for _, live := range []bool{true, false} {
-		for id := uint64(2); id < p.pages; id++ {
-			if p.reached[id] != live {
-				continue
+	for id := uint64(2); id < p.pages; id++ {
+		if p.reached[id] != live {
+			continue
+		}
+		page, err := p.read(id)
+		if err != nil || native.Uint16(page[8:]) != leafPage {
+			continue
+		}
+		n, _ := parse(page) // without its damaged elements
+		for _, e := range n.elements {
+			leaf := node{elements: []element{e}}
+			if e.flags == bucketElement {
+				leaf, _ = inline(e)
 			}
-			page, err := p.read(id)
-			if err != nil || native.Uint16(page[8:]) != leafPage {
-				continue
-			}
-			n, _ := parse(page) // without its damaged elements
-			for _, e := range n.elements {
-				leaf := node{elements: []element{e}}
-				if e.flags == bucketElement {
-					leaf, _ = inline(e)
+			for _, e := range leaf.elements {
+				if e.flags == bucketElement { // on a page of the tree of buckets
+					continue
 				}
-				for _, e := range leaf.elements {
-					if err := visit(e.key, e.value); err != nil {
-						return err
-					}
+				if err := visit(e.key, e.value); err != nil {
+					return err
 				}
 			}
 		}

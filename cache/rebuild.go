@@ -1,8 +1,8 @@
 package cache
 
 import (
+	"crypto/rand"
 	"errors"
-	"io/fs"
 	"os"
 	"time"
 
@@ -12,7 +12,7 @@ import (
 // freshSuffix and damagedSuffix name what lies beside the database while it is
 // rewritten and after it was found damaged.
 const (
-	freshSuffix   = ".new"
+	freshSuffix   = ".new-"
 	damagedSuffix = ".damaged"
 )
 
@@ -23,18 +23,30 @@ const stale = time.Hour
 // rebuild replaces a damaged database by a new one with every value that still
 // verifies. The damaged file is kept beside it until the store is trimmed. The
 // caller holds the gate.
-func (s *Store) rebuild() error {
+func (s *Store) rebuild() error { return guard(s.rebuildIt) }
+
+func (s *Store) rebuildIt() error {
 	path := s.database()
+	old, err := s.lockDatabase()
+	if err != nil {
+		return err
+	}
+	defer old.Close()
+	data, release, err := contents(old)
+	if err != nil {
+		return err
+	}
+	defer release()
+	if intact(data) { // another process was faster
+		s.damaged.Store(false)
+		return nil
+	}
 	kept := 0
-	err := s.rewrite(func(fresh *bolt.DB) (err error) {
-		// Opened for reading, where it still can be, others cannot write to it.
-		if old, _, err := openDatabase(path, true); err == nil {
-			defer old.Close()
-		}
+	err = s.rewrite(func(fresh *bolt.DB) (err error) {
 		if err := fresh.Update(s.prepare); err != nil {
 			return err
 		}
-		if kept, err = salvage(fresh, path); err != nil {
+		if kept, err = salvage(fresh, data); err != nil {
 			return err
 		}
 		os.Remove(path + damagedSuffix)
@@ -53,14 +65,58 @@ func (s *Store) rebuild() error {
 	return nil
 }
 
+// lockDatabase opens the database's file, as it is, and keeps other processes
+// out until it is closed.
+func (s *Store) lockDatabase() (*os.File, error) {
+	for start := time.Now(); ; time.Sleep(5 * time.Millisecond) {
+		file, err := os.OpenFile(s.database(), os.O_RDWR|os.O_CREATE, 0o666)
+		if err != nil {
+			return nil, err
+		}
+		locked, err := tryLock(file)
+		switch {
+		case err != nil:
+			file.Close()
+			return nil, err
+		case locked && sameFile(file, s.database()):
+			return file, nil
+		case time.Since(start) > s.o.Wait:
+			file.Close()
+			return nil, &busyError{s.database(), s.o.Wait}
+		}
+		file.Close()
+	}
+}
+
+// intact says that the pages of a database and every value on them verify.
+func intact(data []byte) bool {
+	pages, err := newPageFile(data)
+	if err != nil || pages.check() != nil {
+		return false
+	}
+	return pages.entries(true, func(key, sealed []byte) error {
+		if bucketOf(key, sealed) == nil {
+			return errors.New("damaged")
+		}
+		return nil
+	}) == nil
+}
+
+// bucketOf is the bucket for which a value is sealed, nil when for none.
+func bucketOf(key, sealed []byte) []byte {
+	for _, bucket := range buckets {
+		if _, err := unseal(bucket, key, sealed); err == nil {
+			return bucket
+		}
+	}
+	return nil
+}
+
 // rewrite puts a new database, filled by fill, in the place of the old one. Other
 // processes that wait for the old one's lock notice and open the new one.
 func (s *Store) rewrite(fill func(fresh *bolt.DB) error) error {
-	path := s.database()
-	if err := os.Remove(path + freshSuffix); err != nil && !errors.Is(err, fs.ErrNotExist) {
-		return err
-	}
-	fresh, err := bolt.Open(path+freshSuffix, 0o666, &bolt.Options{Timeout: s.o.Wait, FreelistType: bolt.FreelistMapType})
+	path := s.database() + freshSuffix + rand.Text()
+	fresh, err := bolt.Open(path, 0o666, &bolt.Options{Timeout: s.o.Wait, FreelistType: bolt.FreelistMapType})
 	if err != nil {
 		return err
 	}
@@ -69,27 +125,20 @@ func (s *Store) rewrite(fill func(fresh *bolt.DB) error) error {
 		err = closing
 	}
 	if err == nil {
-		err = os.Rename(path+freshSuffix, path)
+		err = os.Rename(path, s.database())
 	}
 	if err != nil {
-		os.Remove(path + freshSuffix)
+		os.Remove(path)
 		return err
 	}
 	return syncDir(s.dir)
 }
 
 // salvage copies the values that verify from a damaged file into a prepared
-// database and counts them. The error is one of writing.
-func salvage(to *bolt.DB, path string) (kept int, err error) {
-	file, err := os.Open(path)
-	if err != nil {
-		return 0, nil // nothing to be had
-	}
-	defer file.Close()
-	pages, _ := newPageFile(file)
-	if pages == nil {
-		return 0, nil
-	}
+// database and counts them: first those on pages in use, then those on all
+// others, among them older states. The error is one of writing.
+func salvage(to *bolt.DB, from []byte) (kept int, err error) {
+	pages, _ := newPageFile(from)
 	tx, size := (*bolt.Tx)(nil), 0
 	defer func() {
 		if tx != nil {
@@ -103,31 +152,34 @@ func salvage(to *bolt.DB, path string) (kept int, err error) {
 		}
 		return err
 	}
-	err = pages.entries(func(key, sealed []byte) (err error) {
-		for _, bucket := range buckets[1:] {
-			if _, err := unseal(bucket, key, sealed); err != nil {
-				continue
-			}
-			if tx == nil {
-				if tx, err = to.Begin(true); err != nil {
-					return err
-				}
-			}
-			if tx.Bucket(bucket).Get(key) != nil {
-				return nil
-			}
-			if err := tx.Bucket(bucket).Put(key, sealed); err != nil {
-				return err
-			}
-			kept++
-			if size += len(key) + len(sealed); size > rewriteBytes {
-				return commit()
-			}
+	keep := func(key, sealed []byte) (err error) {
+		bucket := bucketOf(key, sealed)
+		if bucket == nil {
 			return nil
 		}
+		if tx == nil {
+			if tx, err = to.Begin(true); err != nil {
+				return err
+			}
+		}
+		if tx.Bucket(bucket).Get(key) != nil {
+			return nil
+		}
+		if err := tx.Bucket(bucket).Put(key, sealed); err != nil {
+			return err
+		}
+		kept++
+		if size += len(key) + len(sealed); size > rewriteBytes {
+			return commit()
+		}
 		return nil
-	})
-	return kept, errors.Join(err, commit())
+	}
+	for _, live := range []bool{true, false} {
+		if err := pages.entries(live, keep); err != nil {
+			return kept, err
+		}
+	}
+	return kept, commit()
 }
 
 // rewriteBytes is how much is written in one transaction when a database is

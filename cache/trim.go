@@ -57,10 +57,12 @@ func (s *Store) Trim(t Trim) (*Trimmed, error) {
 		return nil, err
 	}
 	s.gate.Lock()
-	os.Remove(s.database() + damagedSuffix)
 	err = s.compact()
 	s.gate.Unlock()
 	if err != nil {
+		return nil, err
+	}
+	if err := s.removeLeftovers(); err != nil {
 		return nil, err
 	}
 	after, err := s.bytes()
@@ -261,6 +263,22 @@ func (s *Store) removeFiles(in *inventory) error {
 		}
 		return nil
 	})
+}
+
+// removeLeftovers removes damaged databases that were set aside, and what was
+// not finished when a process was killed.
+func (s *Store) removeLeftovers() error {
+	os.Remove(s.database() + damagedSuffix)
+	unfinished, err := filepath.Glob(s.database() + freshSuffix + "*")
+	if err != nil {
+		return err
+	}
+	for _, path := range unfinished {
+		if info, err := os.Stat(path); err == nil && s.o.Now().Sub(info.ModTime()) > stale {
+			os.Remove(path)
+		}
+	}
+	return nil
 }
 
 // has says whether an output file's name is a digest that something has.

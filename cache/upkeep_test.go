@@ -187,8 +187,12 @@ func TestTrimSweeps(t *testing.T) {
 		age(filepath.Join(dir, "outputs", unfinished+"1"), 2*stale),
 		age(s.outputPath(DigestOf([]byte("orphan"))), 2*stale),
 		age(filepath.Join(dir, "store.db.damaged"), 0),
+		age(filepath.Join(dir, "store.db.new-1"), 2*stale),
 	}
-	stays := age(filepath.Join(dir, "outputs", unfinished+"2"), 0)
+	stays := []string{
+		age(filepath.Join(dir, "outputs", unfinished+"2"), 0),
+		age(filepath.Join(dir, "store.db.new-2"), 0),
+	}
 	if _, err := s.Trim(Trim{}); err != nil {
 		t.Fatal(err)
 	}
@@ -197,8 +201,10 @@ func TestTrimSweeps(t *testing.T) {
 			t.Errorf("%s is still there", path)
 		}
 	}
-	if _, err := os.Stat(stays); err != nil {
-		t.Error("a file that may still be written to was removed")
+	for _, path := range stays {
+		if _, err := os.Stat(path); err != nil {
+			t.Errorf("%s, which may still be written to, was removed", path)
+		}
 	}
 	wantEntries(t, s, 0, 7)
 }
