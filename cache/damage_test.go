@@ -294,6 +294,10 @@ func TestRandomDamage(t *testing.T) {
 		}
 		wantEntries(t, s, 0, 5)
 		s.Close()
+		s = open(t, dir, Options{}) // what was written into a damaged tree holds together
+		wantEntries(t, s, 0, 5)
+		wantSilence(t, s)
+		s.Close()
 	}
 	mend(t, dir, 60)
 }

@@ -188,7 +188,8 @@ func (s *Store) open(readOnly bool) (*bolt.DB, error) {
 	start, pause := time.Now(), time.Millisecond
 	for {
 		if readOnly {
-			if info, err := os.Stat(path); errors.Is(err, fs.ErrNotExist) || err == nil && info.Size() == 0 {
+			info, err := os.Stat(path)
+			if errors.Is(err, fs.ErrNotExist) || errors.Is(err, syscall.ENOTDIR) || err == nil && info.Size() == 0 {
 				return nil, errAbsent
 			}
 		}

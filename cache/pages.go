@@ -212,8 +212,8 @@ func inline(e element) (node, error) {
 // maxDepth is more than a tree in a file of any size needs.
 const maxDepth = 64
 
-// walk visits the elements of the leaves of a tree whose keys lie from low to
-// before high.
+// walk visits the elements of the leaves of a tree whose keys begin with low and
+// end before high, where these are not nil.
 func (p *pageFile) walk(id uint64, low, high []byte, depth int, visit func(element) error) error {
 	if id < 2 || id >= p.pages || depth > maxDepth {
 		return fmt.Errorf("page %d cannot be part of a bucket", id)
@@ -232,21 +232,18 @@ func (p *pageFile) walk(id uint64, low, high []byte, depth int, visit func(eleme
 	if err := n.ordered(low, high); err != nil {
 		return err
 	}
+	if len(n.elements) == 0 && (n.kind == branchPage || depth > 0) {
+		return fmt.Errorf("page %d is empty", id)
+	}
 	if n.kind == leafPage {
 		return n.each(visit)
 	}
-	if len(n.elements) == 0 {
-		return fmt.Errorf("page %d is an empty branch", id)
-	}
 	for i, e := range n.elements {
-		from, to := low, high
-		if i > 0 {
-			from = e.key
-		}
+		next := high
 		if i+1 < len(n.elements) {
-			to = n.elements[i+1].key
+			next = n.elements[i+1].key
 		}
-		if err := p.walk(e.child, from, to, depth+1, visit); err != nil {
+		if err := p.walk(e.child, e.key, next, depth+1, visit); err != nil {
 			return err
 		}
 	}
@@ -264,11 +261,13 @@ func (p *pageFile) reach(id uint64, count int) error {
 	return nil
 }
 
-// ordered makes sure that keys ascend, from low to before high.
+// ordered makes sure that keys ascend, beginning with low, which is how bbolt
+// finds a node in its parent, and ending before high.
 func (n *node) ordered(low, high []byte) error {
 	for i, e := range n.elements {
-		if i > 0 && bytes.Compare(n.elements[i-1].key, e.key) >= 0 ||
-			low != nil && bytes.Compare(e.key, low) < 0 || high != nil && bytes.Compare(e.key, high) >= 0 {
+		if i == 0 && low != nil && !bytes.Equal(e.key, low) ||
+			i > 0 && bytes.Compare(n.elements[i-1].key, e.key) >= 0 ||
+			high != nil && bytes.Compare(e.key, high) >= 0 {
 			return fmt.Errorf("page %d has keys out of order", n.id)
 		}
 	}

@@ -449,7 +449,7 @@ func TestDamagedOutputsAreComputedAgain(t *testing.T) {
 				top = Computed
 			}
 			wantStates(t, r, fmt.Sprintf("root computed\na computed\nb computed\ntop %s", top))
-			warnings := strings.Join(r.Warnings(), "\n") + strings.Join(s.Warnings(), "\n")
+			warnings := strings.Join(r.Warnings(), "\n")
 			for _, part := range []string{"the output of root was computed again", "the output of a was computed again", "the output of b was computed again", "store.db.damaged"} {
 				if !strings.Contains(warnings, part) {
 					t.Errorf("warnings\n%s\nlack %s", warnings, part)
@@ -513,4 +513,51 @@ func TestMemoryDoesNotGrow(t *testing.T) {
 		t.Errorf("%d MB of memory for 20 nodes, %d MB for 80, limit %d MB", few>>20, many>>20, limit>>20)
 	}
 	t.Logf("%d MB of memory for 20 nodes, %d MB for 80", few>>20, many>>20)
+}
+
+// No lock is held while a node computes: another store on the same folder can
+// be read and written meanwhile.
+func TestStoreIsFreeWhileComputing(t *testing.T) {
+	dir := t.TempDir()
+	other, err := cache.Open(dir, cache.Options{Wait: 50 * time.Millisecond})
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer other.Close()
+	s := openStore(t, dir)
+	inner := mustGraph(t, work("inner", nil, text("inner")))
+	outer := work("outer", []string{"first"}, func(ctx context.Context, job Job) ([]byte, error) {
+		r, err := Run(ctx, inner, other, Options{Recipe: "inner"})
+		if err != nil || r.Result("inner").State != Computed {
+			return nil, fmt.Errorf("%v %v", err, r.Result("inner").State)
+		}
+		return []byte("outer"), nil
+	})
+	r := mustRun(t, mustGraph(t, work("first", nil, text("first")), outer), s, Options{})
+	if r.Err() != nil || len(r.Warnings()) > 0 || len(other.Warnings()) > 0 {
+		t.Error(r.Err(), r.Warnings(), other.Warnings())
+	}
+	wantStates(t, mustRun(t, inner, s, Options{}), "inner reused")
+}
+
+// Where nothing can be stored everything is computed all the same, and said once.
+func TestStoreThatCannotBeWritten(t *testing.T) {
+	file := filepath.Join(t.TempDir(), "file")
+	os.WriteFile(file, nil, 0o666)
+	s := openStore(t, filepath.Join(file, "store"))
+	large := strings.Repeat("large ", 20000)
+	g := mustGraph(t, join("a", large, nil, nil), join("b", "b", []string{"a"}, nil), join("c", "c", []string{"b"}, nil))
+	r := mustRun(t, g, s, Options{Workers: 3})
+	wantStates(t, r, "a computed\nb computed\nc computed")
+	if out, err := r.Output(t.Context(), "c"); err != nil || string(out) != "c(b("+large+"))" {
+		t.Errorf("%.20q, %v", out, err)
+	}
+	if w := r.Warnings(); len(w) != 1 || !strings.Contains(w[0], "kept in memory only") {
+		t.Errorf("warnings %q", w)
+	}
+	again := mustRun(t, g, s, Options{}) // the same store, as when several recipes share nodes
+	wantStates(t, again, "a reused\nb reused\nc reused")
+	if w := again.Warnings(); len(w) != 0 {
+		t.Errorf("warnings %q", w)
+	}
 }

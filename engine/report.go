@@ -108,8 +108,12 @@ func (r *Report) Count(state State) (count int) {
 	return count
 }
 
-// Warnings gives what went wrong with the store and was made good, so far.
+// Warnings gives what went wrong with the store and was made good, so far:
+// reading outputs may add to it.
 func (r *Report) Warnings() []string {
+	for _, w := range r.run.store.Warnings() {
+		r.run.keepNote(w)
+	}
 	r.run.mu.Lock()
 	defer r.run.mu.Unlock()
 	return slices.Clone(r.run.notes)
