@@ -66,7 +66,8 @@ type massModel struct {
 	concentration estimate.Concentration
 	alpha         estimate.Ref
 	core          estimate.Ref
-	drawn         int // how many parameters of the halo are drawn
+	drawn         int  // how many parameters of the halo are drawn
+	shaped        bool // whether the concentration is among them
 	einasto       *projection
 }
 
@@ -81,9 +82,11 @@ func newMassModel(t *estimate.Task, ps *estimate.Parameters) (*massModel, error)
 	m.mass = ps.Assume(method.Settings{"mass_200c": t.Settings["mass"]}, "mass_200c")
 	switch m.kind {
 	case "nfw", "hernquist", "einasto":
+		first := len(ps.Free)
 		if m.concentration, err = ps.Concentration(t); err != nil {
 			return nil, err
 		}
+		m.shaped = len(ps.Free) > first
 		if m.kind == "einasto" {
 			m.alpha = ps.Assume(t.Settings, "alpha")
 			if !m.alpha.Drawn() {
@@ -114,24 +117,25 @@ func (m *massModel) at(theta []float64) (h halo.Model, ok bool) {
 		return halo.NewCoredIsothermal(mass, core, m.threshold), core > 0
 	}
 	c := m.concentration.Of(theta, mass)
-	if !(c > 0) {
+	if !(c > 0) || m.kind == "einasto" && !(m.alpha.Of(theta) > 0) {
 		return nil, false
 	}
+	return m.with(mass, c, theta), true
+}
+
+// with is the halo of a mass and a concentration, otherwise as at theta.
+func (m *massModel) with(mass, c float64, theta []float64) halo.Model {
 	switch m.kind {
 	case "hernquist":
-		return halo.NewHernquist(mass, c, m.threshold), true
+		return halo.NewHernquist(mass, c, m.threshold)
 	case "einasto":
-		alpha := m.alpha.Of(theta)
-		if !(alpha > 0) {
-			return nil, false
-		}
-		h := halo.NewEinasto(mass, c, alpha, m.threshold)
+		h := halo.NewEinasto(mass, c, m.alpha.Of(theta), m.threshold)
 		if m.einasto != nil {
-			return projected{h, m.einasto, h.Rs, h.RhoS * h.Rs}, true
+			return projected{h, m.einasto, h.Rs, h.RhoS * h.Rs}
 		}
-		return h, true
+		return h
 	}
-	return halo.NewNFW(mass, c, m.threshold), true
+	return halo.NewNFW(mass, c, m.threshold)
 }
 
 // lnMass fills out with ln M(<r) at theta.

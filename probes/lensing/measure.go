@@ -1,73 +1,106 @@
 package lensing
 
 import (
-	"fmt"
 	"math"
-
-	"gonum.org/v1/gonum/mat"
 )
 
-// measure compares a model with the shear of a profile.
+// measure compares a model with the shear of a profile. The errors of the bins
+// stand alone, or together with a covariance of their own or of structure along
+// the line of sight.
 type measure struct {
-	bins []Bin
-	// whiten is the inverse of the lower Cholesky factor of the covariance, row
-	// by row; nil when the bins are independent.
-	whiten  []float64
-	logNorm float64 // ln of the likelihood's norm
+	bins  []Bin
+	given []float64 // covariance that takes the place of the errors; nil for none
+	added []float64 // covariance beside them; nil for none
+	c, d  []float64 // scratch
 }
 
-func newMeasure(p *Profile) (*measure, error) {
-	m := &measure{bins: p.Bins, logNorm: -float64(len(p.Bins)) * math.Log(2*math.Pi) / 2}
+func newMeasure(p *Profile, added []float64) *measure {
 	n := len(p.Bins)
-	if p.Covariance == nil {
-		for _, b := range p.Bins {
-			m.logNorm -= math.Log(b.Error()) // of the two half normals together
+	return &measure{bins: p.Bins, given: p.Covariance, added: added, c: make([]float64, n*n), d: make([]float64, n)}
+}
+
+// copy returns a measure for another goroutine.
+func (m *measure) copy() *measure {
+	return newMeasure(&Profile{Bins: m.bins, Covariance: m.given}, m.added)
+}
+
+// compare returns the log likelihood and χ² of the expected shears. Of two
+// errors the upper one holds where the model lies above the datum. Each of
+// modes is a change of all shears together, by one standard deviation of what
+// it stands for: its outer product adds to the covariance.
+func (m *measure) compare(expected []float64, modes ...[]float64) (lnLikelihood, chi2 float64) {
+	n := len(m.bins)
+	lnLikelihood = -float64(n) * math.Log(2*math.Pi) / 2
+	for i := range m.bins {
+		b := &m.bins[i]
+		d := expected[i] - b.Shear
+		sigma := b.Minus
+		if d > 0 {
+			sigma = b.Plus
 		}
-		return m, nil
+		// The two halves share one norm; the determinant below has that of a side.
+		lnLikelihood -= math.Log(b.Error() / sigma)
+		m.d[i], m.c[i*n+i] = d, sigma*sigma
 	}
-	var chol mat.Cholesky
-	if !chol.Factorize(mat.NewSymDense(n, append([]float64(nil), p.Covariance...))) {
-		return nil, fmt.Errorf("the covariance of the shears is not positive definite")
+	if m.given == nil && m.added == nil && len(modes) == 0 {
+		for i, d := range m.d {
+			sigma2 := m.c[i*n+i]
+			chi2 += d * d / sigma2
+			lnLikelihood -= math.Log(sigma2) / 2
+		}
+		return lnLikelihood - chi2/2, chi2
 	}
-	m.logNorm -= chol.LogDet() / 2
-	var lower, inverse mat.TriDense
-	chol.LTo(&lower)
-	if err := inverse.InverseTri(&lower); err != nil {
-		return nil, fmt.Errorf("the covariance of the shears cannot be inverted: %w", err)
-	}
-	m.whiten = make([]float64, n*n)
 	for i := range n {
 		for j := range i + 1 {
-			m.whiten[i*n+j] = inverse.At(i, j)
+			v := 0.0
+			switch {
+			case m.given != nil:
+				v = m.given[i*n+j]
+			case i == j:
+				v = m.c[i*n+i]
+			}
+			if m.added != nil {
+				v += m.added[i*n+j]
+			}
+			for _, mode := range modes {
+				v += mode[i] * mode[j]
+			}
+			m.c[i*n+j] = v
 		}
 	}
-	return m, nil
+	lnRoot, chi2 := whiten(m.c, m.d)
+	return lnLikelihood - lnRoot - chi2/2, chi2
 }
 
-// chi2 is χ² of the expected shears. Of two errors the upper one holds where
-// the model lies above the datum.
-func (m *measure) chi2(expected []float64) float64 {
-	sum := 0.0
-	if m.whiten == nil {
-		for i := range m.bins {
-			b := &m.bins[i]
-			d := (expected[i] - b.Shear)
-			if d > 0 {
-				d /= b.Plus
-			} else {
-				d /= b.Minus
-			}
-			sum += d * d
-		}
-		return sum
-	}
-	n := len(m.bins)
+// whiten factorises the positive definite matrix c, of which it reads and
+// overwrites the lower triangle, by Cholesky, and solves for d in place. It
+// returns half the log determinant and dᵀ c⁻¹ d, which is infinite when the
+// matrix is not positive definite.
+func whiten(c, d []float64) (lnRoot, chi2 float64) {
+	n := len(d)
 	for i := range n {
-		d := 0.0
-		for j, l := range m.whiten[i*n : i*n+i+1] {
-			d += l * (expected[j] - m.bins[j].Shear)
+		row := c[i*n : i*n+i+1]
+		for j := range row {
+			other := c[j*n : j*n+j+1]
+			v := row[j]
+			for k := range j {
+				v -= row[k] * other[k]
+			}
+			if j < i {
+				row[j] = v / other[j]
+				continue
+			}
+			if !(v > 0) {
+				return 0, math.Inf(1)
+			}
+			row[i] = math.Sqrt(v)
 		}
-		sum += d * d
+		for k := range i {
+			d[i] -= row[k] * d[k]
+		}
+		d[i] /= row[i]
+		lnRoot += math.Log(row[i])
+		chi2 += d[i] * d[i]
 	}
-	return sum
+	return lnRoot, chi2
 }

@@ -88,10 +88,7 @@ func TestReadCovariance(t *testing.T) {
 	_, err = reduce(context.Background(), task)
 	refused(t, "not symmetric", err, "matrix.csv, row 5", "the other way round")
 
-	m, err := newMeasure(p)
-	if err != nil {
-		t.Fatal(err)
-	}
+	m := newMeasure(p, nil)
 	// Two correlated bins and three others by hand.
 	d := []float64{0.01, -0.02, 0.03, 0.03, 0.01}
 	expected := make([]float64, 5)
@@ -100,8 +97,9 @@ func TestReadCovariance(t *testing.T) {
 	}
 	a, c := 4e-4, 1e-4
 	want := (a*d[0]*d[0]+a*d[1]*d[1]-2*c*d[0]*d[1])/(a*a-c*c) + d[2]*d[2]/a + d[3]*d[3]/9e-4 + d[4]*d[4]/a
-	near(t, "χ²", m.chi2(expected), want, 1e-12) // rounding
-	near(t, "norm", m.logNorm, -2.5*math.Log(2*math.Pi)-math.Log((a*a-c*c)*a*a*9e-4)/2, 1e-12)
+	ln, chi2 := m.compare(expected)
+	near(t, "χ²", chi2, want, 1e-12) // rounding
+	near(t, "ln of the likelihood", ln, -2.5*math.Log(2*math.Pi)-math.Log((a*a-c*c)*a*a*9e-4)/2-want/2, 1e-12)
 
 	// A part of the profile takes its part of the covariance.
 	part := p.slice(1, 4)
@@ -112,19 +110,21 @@ func TestReadCovariance(t *testing.T) {
 
 // TestTwoSidedErrors chooses the side by the model.
 func TestTwoSidedErrors(t *testing.T) {
-	m, err := newMeasure(&Profile{Bins: []Bin{{Shear: 0.1, Minus: 0.01, Plus: 0.04}}})
-	if err != nil {
-		t.Fatal(err)
+	for _, added := range [][]float64{nil, {0}} {
+		m := newMeasure(&Profile{Bins: []Bin{{Shear: 0.1, Minus: 0.01, Plus: 0.04}}}, added)
+		_, above := m.compare([]float64{0.14})
+		_, below := m.compare([]float64{0.09})
+		near(t, "model above", above, 1, 1e-12) // rounding
+		near(t, "model below", below, 1, 1e-12)
+		// The likelihood is a density of the model's shear: it integrates to one.
+		sum := 0.0
+		const step = 1e-4
+		for g := -0.2; g < 0.5; g += step {
+			ln, _ := m.compare([]float64{g})
+			sum += math.Exp(ln) * step
+		}
+		near(t, "norm", sum, 1, 1e-4) // the step at the datum
 	}
-	near(t, "model above", m.chi2([]float64{0.14}), 1, 1e-12) // rounding
-	near(t, "model below", m.chi2([]float64{0.09}), 1, 1e-12)
-	// The likelihood is a density of the model's shear: it integrates to one.
-	sum := 0.0
-	const step = 1e-4
-	for g := -0.2; g < 0.5; g += step {
-		sum += math.Exp(m.logNorm-m.chi2([]float64{g})/2) * step
-	}
-	near(t, "norm", sum, 1, 1e-4) // the step at the datum
 }
 
 func TestBadProfiles(t *testing.T) {

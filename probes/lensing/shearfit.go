@@ -3,38 +3,51 @@ package lensing
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"steelyard/probes/estimate"
 )
 
 // shearPart holds a halo to the tangential shear of a profile.
 type shearPart struct {
-	task     *estimate.Task
-	profile  *Profile // the bins that are fitted
-	measure  *measure
-	critical float64 // Σ_cr of a source at infinity, Msun/kpc²
-	bias     estimate.Ref
-	dilution estimate.Ref
-	offset   offset
+	task        *estimate.Task
+	halo        *massModel
+	profile     *Profile // the bins that are fitted
+	measure     *measure
+	structureTo float64  // redshift of the sources, for structure in front of them
+	variety     *variety // nil when the variety of haloes is left out
+	critical    float64  // Σ_cr of a source at infinity, Msun/kpc²
+	bias        estimate.Ref
+	dilution    estimate.Ref
+	offset      offset
 }
 
 // addShear adds the shear profile that the task's reduction made.
 func (f *lensFit) addShear() error {
 	t := f.task
-	if terms := t.Settings["covariance"].List; len(terms) != 1 || terms[0] != "shape" {
-		return t.Errorf("say `covariance = [\"shape\"]`: no other source of error is built yet")
+	terms := t.Settings["covariance"].List
+	if !slices.Contains(terms, "shape") {
+		return t.Errorf("covariance: say which sources of error count, as covariance = [\"shape\"]; without `shape` there is no fit")
 	}
 	p := new(Profile)
 	if err := p.UnmarshalBinary(t.Reduced["profile"]); err != nil {
 		return t.Errorf("%w", err)
 	}
-	s := &shearPart{task: t, critical: t.Cosmology.SigmaCritical(t.Object.Redshift, math.Inf(1))}
+	s := &shearPart{task: t, halo: f.halo, critical: t.Cosmology.SigmaCritical(t.Object.Redshift, math.Inf(1))}
 	var err error
 	if s.profile, err = within(p, t); err != nil {
 		return t.Errorf("%w", err)
 	}
-	if s.measure, err = newMeasure(s.profile); err != nil {
-		return t.Errorf("%w", err)
+	var added []float64
+	if slices.Contains(terms, "structure") {
+		if added, s.structureTo, err = structure(t, s.profile.Bins); err != nil {
+			return t.Errorf("%w", err)
+		}
+	}
+	s.measure = newMeasure(s.profile, added)
+	if slices.Contains(terms, "halo") {
+		v := newVariety(f)
+		s.variety = &v
 	}
 	s.bias = f.parameters.Assume(t.Settings, "shear_bias")
 	s.dilution = f.parameters.Assume(t.Settings, "dilution")
@@ -80,10 +93,27 @@ func (s *shearPart) predict(l lens, out []float64) {
 }
 
 func (s *shearPart) likelihood() func(lens) float64 {
-	expected := make([]float64, len(s.profile.Bins))
+	compare := s.comparison()
 	return func(l lens) float64 {
+		ln, _ := compare(l)
+		return ln + s.offset.lnDensity(l.theta)
+	}
+}
+
+// comparison returns a function that gives the log likelihood and χ² of a lens.
+func (s *shearPart) comparison() func(lens) (lnLikelihood, chi2 float64) {
+	n := len(s.profile.Bins)
+	expected, m := make([]float64, n), s.measure.copy()
+	if s.variety == nil {
+		return func(l lens) (float64, float64) {
+			s.predict(l, expected)
+			return m.compare(expected)
+		}
+	}
+	room := [][]float64{make([]float64, n), make([]float64, n)}
+	return func(l lens) (float64, float64) {
 		s.predict(l, expected)
-		return s.measure.logNorm - s.measure.chi2(expected)/2 + s.offset.lnDensity(l.theta)
+		return m.compare(expected, s.variety.modes(l, s.halo, expected, s.predict, room)...)
 	}
 }
 
@@ -91,7 +121,8 @@ func (s *shearPart) state(best lens, fit *estimate.Fit) {
 	bins := s.profile.Bins
 	expected := make([]float64, len(bins))
 	s.predict(best, expected)
-	fit.Chi2 += s.measure.chi2(expected)
+	_, chi2 := s.comparison()(best)
+	fit.Chi2 += chi2
 	fit.Dof += len(bins)
 	cover(fit, bins[0].Inner, bins[len(bins)-1].Outer)
 	checks, warnings := s.profile.checks(expected)
@@ -116,8 +147,5 @@ func (s *shearPart) assumes() []string {
 	if s.profile.Bins[0].Inner == s.profile.Bins[0].Outer {
 		lines = append(lines, "shear: taken at the quoted radii, which stand for bins of no width")
 	}
-	if s.profile.Covariance != nil {
-		return append(lines, "errors: the covariance given with the profile")
-	}
-	return append(lines, "errors: shape noise alone; structure along the line of sight and the variety of haloes are left out")
+	return append(lines, s.terms())
 }

@@ -21,23 +21,19 @@ var tangentialShear = estimate.Method{
 			"Seitz & Schneider 1997, A&A 318, 687 (mean over sources)",
 			"Bartelmann 1996, A&A 313, 697; Wright & Brainerd 2000, ApJ 534, 34 (NFW shear)",
 			"Navarro, Frenk & White 1997, ApJ 490, 493 (halo)",
+			"Eisenstein & Hu 1998, ApJ 496, 605; Takahashi et al. 2012, ApJ 761, 152; Hoekstra 2003, MNRAS 339, 1155 (structure along the line of sight)",
 		},
 		Data: [][]string{{"galaxies", "bins"}, {"profile"}},
-		Settings: append(slices.Clone(haloSettings), []method.Setting{
-			{
-				Name: "covariance", Kind: method.Choices, Choices: []string{"shape"}, Planned: []string{"structure", "halo"}, Required: true,
-				Doc: "which sources of error the fit counts. Only `shape`, the noise of the galaxies' own shapes, is built yet, and it must be named: " +
-					"the errors are too small by what structure along the line of sight and the variety of haloes add",
-			},
+		Settings: slices.Concat(haloSettings, termSettings, []method.Setting{
 			{
 				Name: "fit_within", Kind: method.Span, Unit: "kpc", Length: true,
 				Doc: "use only the bins that lie wholly between these radii",
 			},
 			shearBiasSetting, dilutionSetting, distanceScaleSetting, elongationSetting, miscentringSetting,
-		}...),
+		}),
 		Cautions: []string{
 			"The mean over sources is of second order in κ: where g exceeds 0.3 it is low by several per cent; leave such bins out with fit_within.",
-			"With shape noise alone the error does not hold structure along the line of sight, which adds about as much for a massive cluster at large radii (Hoekstra 2003, MNRAS 339, 1155).",
+			"With shape noise alone the error does not hold structure along the line of sight, which can add as much (Hoekstra 2003, MNRAS 339, 1155), nor the variety of haloes.",
 		},
 	},
 	Uses: []string{"profile"},

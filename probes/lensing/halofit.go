@@ -1,4 +1,4 @@
-package matter
+package lensing
 
 import "math"
 
@@ -12,8 +12,8 @@ type halofit struct {
 	f1, f2, f3                      float64
 }
 
-// Power is the non-linear power at wavenumber k and redshift z.
-func (s *Spectrum) Power(k, z float64) float64 {
+// power is the non-linear power at wavenumber k and redshift z.
+func (s *spectrum) power(k, z float64) float64 {
 	f, ok := s.nonlinear[z]
 	if !ok {
 		f = s.fit(z)
@@ -35,7 +35,7 @@ func (s *Spectrum) Power(k, z float64) float64 {
 // an rms of one, and the slope and curvature of its variance there:
 //
 //	n = −3 − d ln σ²/d ln R,   C = −d² ln σ²/d ln R².
-func (s *Spectrum) fit(z float64) halofit {
+func (s *spectrum) fit(z float64) halofit {
 	d := s.background.GrowthFactor(z)
 	f := halofit{growth2: d * d}
 	// σ² and its first two derivatives in ln R; x = kR.

@@ -1,4 +1,4 @@
-package matter
+package lensing
 
 import "math"
 

@@ -1,4 +1,4 @@
-package matter
+package lensing
 
 import (
 	"fmt"
@@ -10,23 +10,23 @@ import (
 	"steelyard/probes/constants"
 )
 
-// Convergence is the power spectrum of the convergence of sources at one
+// convergence is the power spectrum of the convergence of sources at one
 // redshift.
-type Convergence struct{ lnPower interp.NaturalCubic }
+type convergence struct{ lnPower interp.NaturalCubic }
 
 // The multipoles of the table, and how many steps it has between.
 const lowest, highest, multipoleSteps = 1.0, 1e6, 120
 
-// Convergence projects the matter in front of sources at redshift source, in
+// convergence projects the matter in front of sources at redshift source, in
 // the flat-sky approximation of Limber (Kaiser 1992):
 //
 //	P_κ(l) = ∫ dχ (W/f)² P(l/f, z),   W = (3/2) Ω_m (H0/c)² (1+z) f β(z, z_s),
 //
 // f being the transverse comoving distance at χ and β = D_ls/D_s the efficiency
 // of a lens there.
-func (s *Spectrum) Convergence(source float64) (*Convergence, error) {
+func (s *spectrum) convergence(source float64) (*convergence, error) {
 	if !(source > 0 && source < 1100) {
-		return nil, fmt.Errorf("matter: sources at redshift %g", source)
+		return nil, fmt.Errorf("sources at redshift %g", source)
 	}
 	const n = 48
 	z, w := make([]float64, n), make([]float64, n)
@@ -46,26 +46,26 @@ func (s *Spectrum) Convergence(source float64) (*Convergence, error) {
 		lnL[i] = math.Log(lowest) + math.Log(highest/lowest)*float64(i)/multipoleSteps
 		sum := 0.0
 		for _, p := range planes {
-			sum += p.weight * s.Power(math.Exp(lnL[i])/p.distance, p.z)
+			sum += p.weight * s.power(math.Exp(lnL[i])/p.distance, p.z)
 		}
 		lnP[i] = math.Log(sum)
 	}
-	c := new(Convergence)
+	c := new(convergence)
 	if err := c.lnPower.Fit(lnL, lnP); err != nil {
-		return nil, fmt.Errorf("matter: %w", err)
+		return nil, fmt.Errorf("%w", err)
 	}
 	return c, nil
 }
 
-// Power is P_κ at multipole l, between 1 and 1e6.
-func (c *Convergence) Power(l float64) float64 { return math.Exp(c.lnPower.Predict(math.Log(l))) }
+// power is P_κ at multipole l, between 1 and 1e6.
+func (c *convergence) power(l float64) float64 { return math.Exp(c.lnPower.Predict(math.Log(l))) }
 
-// ShearCovariance is the covariance of the mean tangential shear in annuli of
+// shearCovariance is the covariance of the mean tangential shear in annuli of
 // inner and outer radii in radians (equal ones stand for circles), row by row
 // (Hoekstra 2003, MNRAS 339, 1155):
 //
 //	C_ij = (1/2π) ∫ l dl P_κ(l) g_i(l) g_j(l),   g = 2/(b²−a²) ∫_a^b J₂(lθ) θ dθ.
-func (c *Convergence) ShearCovariance(inner, outer []float64) []float64 {
+func (c *convergence) shearCovariance(inner, outer []float64) []float64 {
 	n := len(inner)
 	out, g := make([]float64, n*n), make([]float64, n)
 	widest := outer[n-1]
@@ -73,9 +73,9 @@ func (c *Convergence) ShearCovariance(inner, outer []float64) []float64 {
 		// Fine against the power spectrum, and against the fastest wave.
 		step := min(0.02*l, 0.3/widest)
 		for i := range g {
-			g[i] = ring(l+step/2, inner[i], outer[i])
+			g[i] = meanJ2(l+step/2, inner[i], outer[i])
 		}
-		w := (l + step/2) * c.Power(l+step/2) * step / (2 * math.Pi)
+		w := (l + step/2) * c.power(l+step/2) * step / (2 * math.Pi)
 		for i := range n {
 			for j := range i + 1 {
 				out[i*n+j] += w * g[i] * g[j]
@@ -95,9 +95,9 @@ func (c *Convergence) ShearCovariance(inner, outer []float64) []float64 {
 	return out
 }
 
-// ring is the mean of J₂(lθ) over the annulus a ≤ θ ≤ b, in closed form by
+// meanJ2 is the mean of J₂(lθ) over the annulus a ≤ θ ≤ b, in closed form by
 // ∫ x J₂ dx = −x J₁ − 2 J₀.
-func ring(l, a, b float64) float64 {
+func meanJ2(l, a, b float64) float64 {
 	if (b-a)*l < 1e-3*max(1, a*l) { // the difference below would lose its digits
 		return math.Jn(2, l*(a+b)/2)
 	}
