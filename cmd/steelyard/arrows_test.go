@@ -44,7 +44,8 @@ var (
 
 		"cache":           nil,
 		"engine":          {"cache"},
-		"engine/weighing": nil,
+		"engine/layout":   nil,
+		"engine/weighing": {"engine/layout"},
 		"engine/assemble": join(leaves, ground, []string{"engine", "engine/weighing", "recipes",
 			"probes/xray", "probes/lensing", "probes/dynamics", "probes/reported", "probes/reconcile"}),
 	}

@@ -31,8 +31,8 @@ func (i Interval) Round() (median, plus, minus string) {
 	return fixed(i.Median, d), "+" + fixed(up, d), "-" + fixed(down, d)
 }
 
-// scaled divides an interval by a unit.
-func (i Interval) scaled(unit float64) Interval {
+// Scaled divides an interval by a unit.
+func (i Interval) Scaled(unit float64) Interval {
 	return Interval{i.Median / unit, i.Lo / unit, i.Hi / unit}
 }
 

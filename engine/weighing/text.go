@@ -5,14 +5,13 @@ import (
 	"io"
 	"math"
 	"strings"
-	"unicode/utf8"
-)
 
-const width = 100 // columns of the terminal the text is laid out for
+	"steelyard/engine/layout"
+)
 
 // WriteText writes the weighing for reading in a terminal.
 func (w *Weighing) WriteText(out io.Writer) error {
-	t := &text{w: w, unit: w.massUnit()}
+	t := &text{w: w, unit: w.MassUnit()}
 	t.title()
 	t.masses()
 	for _, c := range w.places() {
@@ -31,8 +30,8 @@ type text struct {
 	unit float64 // power of ten in which masses are written
 }
 
-// massUnit is the power of ten of a typical mass of the object.
-func (w *Weighing) massUnit() float64 {
+// MassUnit is the power of ten of a typical mass of the object.
+func (w *Weighing) MassUnit() float64 {
 	sum, n := 0.0, 0
 	for _, e := range w.Estimates {
 		for _, own := range e.Own {
@@ -48,6 +47,10 @@ func (w *Weighing) massUnit() float64 {
 }
 
 func (t *text) printf(format string, args ...any) { fmt.Fprintf(&t.b, format, args...) }
+
+func (t *text) table(rows [][]string) { layout.Table(&t.b, rows) }
+
+func (t *text) wrap(s string) { layout.Wrap(&t.b, "  ", 2, s) }
 
 func (t *text) title() {
 	c := t.w.Cosmology
@@ -77,7 +80,7 @@ func (t *text) masses() {
 	for _, e := range t.w.Estimates {
 		row, radius := []string{e.Name}, ""
 		for _, own := range e.Own {
-			row = append(row, own.Mass.scaled(t.unit).String()+star(own.Extrapolated))
+			row = append(row, own.Mass.Scaled(t.unit).String()+star(own.Extrapolated))
 			beyond = beyond || own.Extrapolated
 			if own.Of == "critical" && own.Overdensity == 500 {
 				radius = own.Radius.String()
@@ -120,7 +123,7 @@ func (t *text) place(label string) {
 		for _, at := range e.At {
 			if at.At == label {
 				radius = at.Radius
-				rows = append(rows, []string{e.Name, at.Mass.scaled(t.unit).String() + star(at.Extrapolated)})
+				rows = append(rows, []string{e.Name, at.Mass.Scaled(t.unit).String() + star(at.Extrapolated)})
 			}
 		}
 	}
@@ -191,7 +194,7 @@ func (t *text) section(title string, items func(Estimate) []string) {
 			t.printf("\n%s\n", title)
 			wrote = true
 		}
-		t.wrap("  ", e.Name+": "+strings.Join(list, "; "))
+		t.wrap(e.Name + ": " + strings.Join(list, "; "))
 	}
 }
 
@@ -217,57 +220,8 @@ func (t *text) cautions() {
 	}
 	t.printf("\nCautions\n")
 	for _, line := range lines {
-		t.wrap("  ", line)
+		t.wrap(line)
 	}
-}
-
-// table writes rows with the first column left and the others right aligned;
-// rows too long for the terminal put their first column on a line of its own.
-func (t *text) table(rows [][]string) {
-	widths := make([]int, len(rows[0]))
-	for _, row := range rows {
-		for c, cell := range row {
-			widths[c] = max(widths[c], utf8.RuneCountInString(cell))
-		}
-	}
-	total := 2
-	for _, w := range widths {
-		total += w + 2
-	}
-	for _, row := range rows {
-		line := "  " + row[0]
-		if total > width && len(row) > 1 {
-			if row[0] != "" {
-				t.printf("%s\n", line)
-			}
-			line = "     "
-		} else {
-			line += pad(row[0], widths[0])
-		}
-		for c, cell := range row[1:] {
-			line += "  " + pad(cell, widths[c+1]) + cell
-		}
-		t.printf("%s\n", strings.TrimRight(line, " "))
-	}
-}
-
-func pad(cell string, w int) string { return strings.Repeat(" ", w-utf8.RuneCountInString(cell)) }
-
-// wrap breaks a text at spaces, later lines indented two more.
-func (t *text) wrap(indent, s string) {
-	line := indent
-	for i, word := range strings.Fields(s) {
-		if i > 0 && utf8.RuneCountInString(line)+1+utf8.RuneCountInString(word) > width {
-			t.printf("%s\n", line)
-			line = indent + "  " + word
-			continue
-		}
-		if i > 0 {
-			line += " "
-		}
-		line += word
-	}
-	t.printf("%s\n", line)
 }
 
 func star(extrapolated bool) string {

@@ -1,0 +1,67 @@
+// Package layout sets text for a terminal of 100 columns.
+package layout
+
+import (
+	"strings"
+	"unicode/utf8"
+)
+
+// Width is the number of columns that text is laid out for.
+const Width = 100
+
+// Table writes rows, indented by two, with the first column left and the others
+// right aligned; rows too long for the terminal put their first column on a line
+// of its own.
+func Table(b *strings.Builder, rows [][]string) {
+	var widths []int
+	for _, row := range rows {
+		for c, cell := range row {
+			if c == len(widths) {
+				widths = append(widths, 0)
+			}
+			widths[c] = max(widths[c], utf8.RuneCountInString(cell))
+		}
+	}
+	total := 0
+	for _, w := range widths {
+		total += w + 2
+	}
+	for _, row := range rows {
+		line := "  " + row[0]
+		if total > Width && len(row) > 1 {
+			if row[0] != "" {
+				b.WriteString(line + "\n")
+			}
+			line = "     "
+		} else {
+			line += padding(row[0], widths[0])
+		}
+		for c, cell := range row[1:] {
+			line += "  " + padding(cell, widths[c+1]) + cell
+		}
+		b.WriteString(strings.TrimRight(line, " ") + "\n")
+	}
+}
+
+func padding(cell string, width int) string {
+	return strings.Repeat(" ", width-utf8.RuneCountInString(cell))
+}
+
+// Wrap writes s on as many lines as it takes, broken at spaces: the first begins
+// with head, the others with as many spaces and hang more.
+func Wrap(b *strings.Builder, head string, hang int, s string) {
+	line := head
+	indent := strings.Repeat(" ", utf8.RuneCountInString(head)+hang)
+	for i, word := range strings.Fields(s) {
+		switch {
+		case i == 0:
+		case utf8.RuneCountInString(line)+1+utf8.RuneCountInString(word) > Width:
+			b.WriteString(line + "\n")
+			line = indent
+		default:
+			line += " "
+		}
+		line += word
+	}
+	b.WriteString(line + "\n")
+}
