@@ -35,14 +35,12 @@ func (s *Store) Absorb(ctx context.Context, dir string) (*Absorbed, error) {
 	}
 	a := &Absorbed{}
 	for _, step := range []func(context.Context, *Store, *Absorbed) error{s.absorbRecords, s.absorbNames, s.absorbHistory} {
-		err := step(ctx, other, a)
-		if isDamage(err) {
-			a.Skipped++
-			err = nil
-		}
-		if err != nil {
+		if err := step(ctx, other, a); err != nil {
 			return a, err
 		}
+	}
+	for _, w := range other.Warnings() {
+		s.warn("%s", w)
 	}
 	return a, nil
 }
@@ -60,7 +58,7 @@ func (s *Store) absorbRecords(ctx context.Context, other *Store, a *Absorbed) er
 		batch = batch[:0]
 		return err
 	}
-	err := other.scan(recordBucket, func(key, value []byte, damage error) error {
+	err := other.tolerate(other.scan(recordBucket, func(key, value []byte, damage error) error {
 		r, err := DecodeRecord(value)
 		if damage != nil || err != nil {
 			a.Skipped++
@@ -70,8 +68,11 @@ func (s *Store) absorbRecords(ctx context.Context, other *Store, a *Absorbed) er
 			return nil
 		}
 		return flush()
-	})
-	return errors.Join(err, flush())
+	}))
+	if err != nil {
+		return err
+	}
+	return flush()
 }
 
 func (s *Store) absorbBatch(ctx context.Context, other *Store, a *Absorbed, batch []*Record) error {
@@ -128,12 +129,12 @@ func (s *Store) absorbBatch(ctx context.Context, other *Store, a *Absorbed, batc
 // absorbNames takes over what names stand for that mean nothing here yet.
 func (s *Store) absorbNames(ctx context.Context, other *Store, _ *Absorbed) error {
 	names := map[string][]byte{}
-	err := other.scan(nameBucket, func(key, value []byte, damage error) error {
+	err := other.tolerate(other.scan(nameBucket, func(key, value []byte, damage error) error {
 		if damage == nil {
 			names[string(key)] = value
 		}
 		return ctx.Err()
-	})
+	}))
 	if err != nil || len(names) == 0 {
 		return err
 	}

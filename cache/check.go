@@ -1,15 +1,18 @@
 package cache
 
 import (
+	"bytes"
 	"context"
 	"crypto/sha256"
+	"encoding/hex"
 	"errors"
 	"fmt"
 	"io"
 	"io/fs"
+	"maps"
 	"os"
 	"path/filepath"
-	"strings"
+	"slices"
 
 	bolt "go.etcd.io/bbolt"
 )
@@ -21,13 +24,6 @@ type Checked struct {
 	Weighings int // that verify
 	Bytes     int64
 	Problems  []string // one sentence each; none when all is well
-
-	sound   map[Digest]bool
-	wanting []*Record // whose outputs were not among the sound ones
-}
-
-func (c *Checked) problem(format string, args ...any) {
-	c.Problems = append(c.Problems, fmt.Sprintf(format, args...))
 }
 
 // Check reads everything in the store and verifies every checksum. With repair,
@@ -35,62 +31,70 @@ func (c *Checked) problem(format string, args ...any) {
 // is needed; without, nothing is changed. No lock is held for long: others may
 // use the store meanwhile.
 func (s *Store) Check(ctx context.Context, repair bool) (*Checked, error) {
-	c := &Checked{sound: map[Digest]bool{}}
-	if err := s.checkFiles(ctx, c, repair); err != nil {
+	c := &checker{store: s, sound: map[Digest]bool{}, wanting: map[Digest]string{}}
+	if err := c.files(ctx, repair); err != nil {
 		return nil, err
 	}
 	for _, bucket := range [][]byte{outputBucket, recordBucket, historyBucket, nameBucket, usedBucket, kindBucket, fileBucket} {
-		if err := s.checkBucket(ctx, c, bucket); err != nil {
+		if err := c.bucket(ctx, bucket); err != nil {
 			return nil, err
 		}
 	}
-	for _, r := range c.wanting { // perhaps stored since we looked
-		if _, err := s.Output(r.Output); err != nil {
-			c.problem("the output of %s (%s) cannot be used: %v", r.Name.Node, r.Output.Short(), err)
+	for _, d := range slices.SortedFunc(maps.Keys(c.wanting), func(a, b Digest) int { return bytes.Compare(a[:], b[:]) }) {
+		if _, err := s.Output(d); err != nil { // and was not stored since we looked
+			c.problem("the output of %s (%s) cannot be used: %v", c.wanting[d], d.Short(), err)
 		}
 	}
 	if repair && s.damaged.Load() {
-		return c, s.update(func(*bolt.Tx) error { return nil })
+		return &c.Checked, s.update(func(*bolt.Tx) error { return nil })
 	}
-	return c, nil
+	return &c.Checked, nil
 }
 
-func (s *Store) checkBucket(ctx context.Context, c *Checked, bucket []byte) error {
-	err := s.scan(bucket, func(key, value []byte, damage error) error {
-		if err := ctx.Err(); err != nil {
-			return err
-		}
+type checker struct {
+	Checked
+	store   *Store
+	sound   map[Digest]bool   // outputs that verify
+	wanting map[Digest]string // outputs not among them -> whose they are
+}
+
+func (c *checker) problem(format string, args ...any) {
+	c.Problems = append(c.Problems, fmt.Sprintf(format, args...))
+}
+
+// want notes that an output is referred to.
+func (c *checker) want(d Digest, whose string) {
+	if !c.sound[d] {
+		c.wanting[d] = whose
+	}
+}
+
+// bucket verifies the entries of a bucket.
+func (c *checker) bucket(ctx context.Context, bucket []byte) error {
+	err := c.store.scan(bucket, func(key, value []byte, damage error) error {
 		if damage != nil {
 			c.problem("an entry among the %s in the database is damaged: %v", bucket, damage)
-			return nil
+			return ctx.Err()
 		}
 		switch string(bucket) {
 		case string(outputBucket):
-			c.Bytes += int64(len(value))
-			if d := Digest(key); DigestOf(value) == d {
-				c.Outputs++
-				c.sound[d] = true
-			} else {
-				c.problem("the stored output %s is damaged", d.Short())
-			}
+			c.output(Digest(key), DigestOf(value), int64(len(value)), "the database")
 		case string(recordBucket):
-			r, err := DecodeRecord(value)
-			if err != nil {
+			if r, err := DecodeRecord(value); err != nil {
 				c.problem("the record %s cannot be read: %v", Key(key).Short(), err)
-				return nil
-			}
-			c.Records++
-			if !c.sound[r.Output] {
-				c.wanting = append(c.wanting, r)
+			} else {
+				c.Records++
+				c.want(r.Output, r.Name.Node)
 			}
 		case string(historyBucket):
-			if _, err := decodeWeighing(key, value); err != nil {
+			if w, err := decodeWeighing(key, value); err != nil {
 				c.problem("an entry in the history of weighings cannot be read: %v", err)
-				return nil
+			} else {
+				c.Weighings++
+				c.want(w.Body, fmt.Sprintf("weighing %d of %s", w.Number, w.Recipe))
 			}
-			c.Weighings++
 		}
-		return nil
+		return ctx.Err()
 	})
 	if isDamage(err) {
 		c.problem("pages of the database that hold %s cannot be read: %v", bucket, err)
@@ -99,36 +103,41 @@ func (s *Store) checkBucket(ctx context.Context, c *Checked, bucket []byte) erro
 	return err
 }
 
-// checkFiles verifies the outputs that are files.
-func (s *Store) checkFiles(ctx context.Context, c *Checked, repair bool) error {
-	err := filepath.WalkDir(s.outputDir(), func(path string, entry fs.DirEntry, err error) error {
-		if errors.Is(err, fs.ErrNotExist) || err == nil && (entry.IsDir() || strings.HasPrefix(entry.Name(), unfinished)) {
+// output counts an output if it is what its name says.
+func (c *checker) output(name, content Digest, size int64, where string) bool {
+	if content != name {
+		c.problem("the stored output %s in %s is damaged", name.Short(), where)
+		return false
+	}
+	c.Outputs++
+	c.Bytes += size
+	c.sound[name] = true
+	return true
+}
+
+// files verifies the outputs that are files.
+func (c *checker) files(ctx context.Context, repair bool) error {
+	return filepath.WalkDir(c.store.outputDir(), func(path string, entry fs.DirEntry, err error) error {
+		if errors.Is(err, fs.ErrNotExist) || err == nil && entry.IsDir() {
 			return nil
 		}
 		if err != nil {
 			return err
 		}
-		if err := ctx.Err(); err != nil {
-			return err
+		name, err := hex.DecodeString(entry.Name())
+		if err != nil || len(name) != len(Digest{}) { // being written, or none of ours
+			return ctx.Err()
 		}
-		d, size, err := digestOfFile(path)
+		content, size, err := digestOfFile(path)
 		switch {
+		case errors.Is(err, fs.ErrNotExist): // removed since
 		case err != nil:
 			c.problem("the stored output %s cannot be read: %v", path, err)
-		case d.String() != entry.Name():
-			c.problem("the stored output %s is damaged", path)
-		default:
-			c.Outputs++
-			c.Bytes += size
-			c.sound[d] = true
-			return nil
-		}
-		if repair {
+		case !c.output(Digest(name), content, size, path) && repair:
 			return os.Remove(path)
 		}
-		return nil
+		return ctx.Err()
 	})
-	return err
 }
 
 func digestOfFile(path string) (d Digest, size int64, err error) {

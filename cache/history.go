@@ -63,7 +63,7 @@ func lastOf(b *bolt.Bucket, prefix []byte) (last []byte) {
 // all recipes when recipe is "". Damaged entries are left out with a warning.
 func (s *Store) History(recipe string) ([]Weighing, error) {
 	var list []Weighing
-	err := s.scan(historyBucket, func(key, value []byte, damage error) error {
+	err := s.tolerate(s.scan(historyBucket, func(key, value []byte, damage error) error {
 		if damage != nil {
 			s.warn("an entry in the history of weighings is damaged and left out")
 			return nil
@@ -75,11 +75,7 @@ func (s *Store) History(recipe string) ([]Weighing, error) {
 			list = append(list, w)
 		}
 		return nil
-	})
-	if isDamage(err) {
-		s.warn("part of the history of weighings cannot be read (%v)", err)
-		err = nil
-	}
+	}))
 	return list, err
 }
 

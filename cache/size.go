@@ -38,25 +38,25 @@ func (s *Store) Size() (*Usage, error) {
 		used  time.Time
 	}
 	records := map[Key]*held{}
-	err := s.scan(recordBucket, func(key, value []byte, damage error) error {
-		if damage != nil {
-			return nil
-		}
-		if r, err := DecodeRecord(value); err == nil {
-			records[r.Key()] = &held{bytes: r.Size, used: r.Finished}
+	err := s.tolerate(s.scan(recordBucket, func(key, value []byte, damage error) error {
+		if r, err := DecodeRecord(value); damage == nil && err == nil {
+			records[Key(key)] = &held{bytes: r.Size, used: r.Finished}
 		}
 		return nil
-	})
+	}))
 	if err != nil {
 		return nil, err
 	}
 	u.Records = len(records)
-	err = s.scan(usedBucket, func(key, value []byte, damage error) error {
-		if r := records[Key(key)]; damage == nil && r != nil && len(value) == 8 {
+	err = s.tolerate(s.scan(usedBucket, func(key, value []byte, damage error) error {
+		if damage != nil || len(value) != 8 {
+			return nil
+		}
+		if r := records[Key(key)]; r != nil {
 			r.used = time.Unix(int64(binary.BigEndian.Uint64(value)), 0).UTC()
 		}
 		return nil
-	})
+	}))
 	if err != nil {
 		return nil, err
 	}
@@ -67,7 +67,7 @@ func (s *Store) Size() (*Usage, error) {
 		}
 		return recipes[recipe]
 	}
-	err = s.scan(nameBucket, func(key, value []byte, damage error) error {
+	err = s.tolerate(s.scan(nameBucket, func(key, value []byte, damage error) error {
 		name, err := nameOf(key)
 		if err != nil || damage != nil || len(value) != 2*len(Key{}) {
 			return nil
@@ -81,7 +81,7 @@ func (s *Store) Size() (*Usage, error) {
 			}
 		}
 		return nil
-	})
+	}))
 	if err != nil {
 		return nil, err
 	}

@@ -264,3 +264,39 @@ func TestAbsorb(t *testing.T) {
 		}
 	}
 }
+
+// A damaged store is looked after like any other, and said to be damaged.
+func TestUpkeepOfDamagedStore(t *testing.T) {
+	for name, change := range map[string]func([]byte) []byte{
+		"text":   func([]byte) []byte { return []byte("not a database at all\n") },
+		"pages":  func(b []byte) []byte { return append(b[:4*4096:4*4096], make([]byte, len(b)-4*4096)...) },
+		"values": func(b []byte) []byte { return bytes.ReplaceAll(b, []byte("number 1"), []byte("number 7")) },
+	} {
+		t.Run(name, func(t *testing.T) {
+			dir := filled(t, 30)
+			spoil(t, dir, change)
+			s := open(t, dir, Options{})
+			if u, err := s.Size(); err != nil || u.Records >= 30 {
+				t.Errorf("size: %+v, %v", u, err)
+			}
+			if _, err := s.History(""); err != nil {
+				t.Errorf("history: %v", err)
+			}
+			if c, err := s.Check(t.Context(), false); err != nil || len(c.Problems) == 0 {
+				t.Errorf("check: %+v, %v", c, err)
+			}
+			absorbing := open(t, t.TempDir(), Options{})
+			if a, err := absorbing.Absorb(t.Context(), dir); err != nil || a.Records >= 30 || a.Skipped == 0 && len(absorbing.Warnings()) == 0 {
+				t.Errorf("absorb: %+v, %v", a, err)
+			}
+			if _, err := s.Trim(Trim{Before: time.Unix(0, 0)}); err != nil {
+				t.Errorf("trim: %v", err)
+			}
+			if w := strings.Join(s.Warnings(), "\n"); !strings.Contains(w, "was damaged") {
+				t.Errorf("warnings %q", w)
+			}
+			s.Close()
+			mend(t, dir, 30)
+		})
+	}
+}
