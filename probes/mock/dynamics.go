@@ -8,15 +8,17 @@ import (
 )
 
 // Motions says what catalogue of galaxy redshifts to invent. Members follow the
-// mass of the halo and move on isotropic orbits in exact equilibrium, out to
-// Reach times R200; galaxies that merely fall in and galaxies of the field, spread
-// evenly over sky and velocity, can be mixed in.
+// mass of the halo out to Reach times R200. On isotropic orbits they are in exact
+// equilibrium; with an anisotropy their velocities are normal, with the variances
+// of the Jeans equation. Galaxies that merely fall in and galaxies of the field,
+// spread evenly over sky and velocity, can be mixed in.
 type Motions struct {
 	Members       int
 	Infalling     int     // between 1 and 5 R200, on their way in
 	Field         int     // unrelated, before and behind
 	Radius        float64 // of the round area on the sky, radians
 	Reach         float64 // in units of R200; 0 stands for 5
+	Anisotropy    float64 // β = 1 − σ_t²/σ_r² of the members, the same everywhere
 	Window        float64 // km/s on both sides that field galaxies fill; 0 stands for 6000
 	RedshiftError float64 // standard deviation, of every galaxy
 }
@@ -48,13 +50,21 @@ func (t Truth) Motions(m Motions, rng *rand.Rand) *MotionCatalogue {
 	}
 	orbits := t.Halo().orbits()
 	edge := m.Radius * distance
+	variance := orbits.radialVariance(m.Anisotropy)
 	for n := 0; n < m.Members; {
 		r := orbits.radius(m.Reach*t.R200(), rng)
-		if R := r * sinOfRandomAngle(rng); R < edge {
-			// Isotropic: any direction of the velocity serves as line of sight.
-			add(R, orbits.speed(r, rng)*(2*rng.Float64()-1), true)
-			n++
+		sin := sinOfRandomAngle(rng)
+		if r*sin >= edge {
+			continue
 		}
+		n++
+		if m.Anisotropy == 0 {
+			// Any direction of the velocity serves as line of sight.
+			add(r*sin, orbits.speed(r, rng)*(2*rng.Float64()-1), true)
+			continue
+		}
+		along := lookup(orbits.lnR, variance, math.Log(r)) * (1 - m.Anisotropy*sin*sin)
+		add(r*sin, math.Sqrt(along)*rng.NormFloat64(), true)
 	}
 	for n := 0; n < m.Infalling; {
 		r := t.R200() * (1 + 4*rng.Float64())
@@ -102,6 +112,7 @@ func (t Truth) infall(r float64) float64 {
 type orbits struct {
 	lnR  []float64 // ln of kpc, rising, evenly spaced
 	mass []float64 // Msun inside
+	rho  []float64 // Msun/kpc³
 	psi  []float64 // relative potential, (km/s)², falling
 	f    []float64 // distribution function at ε = psi, any units
 }
@@ -116,6 +127,7 @@ func (h *Halo) orbits() *orbits {
 	o := &orbits{}
 	step := math.Log(orbitTo/orbitFrom) / (orbitGrid - 1)
 	rho := make([]float64, orbitGrid)
+	o.rho = rho
 	shell := func(r float64) float64 { return 4 * math.Pi * r * r * r * h.Density(r) } // dM/d ln r
 	for i := range rho {
 		ln := math.Log(orbitFrom*h.Rs) + float64(i)*step
@@ -143,6 +155,25 @@ func (h *Halo) orbits() *orbits {
 	}
 	o.f = eddington(o.psi, rho)
 	return o
+}
+
+// radialVariance is σ_r² in (km/s)² along the grid for a constant anisotropy:
+//
+//	ρ r^2β σ_r² = ∫_r^∞ ρ s^2β G M ds/s²,
+//
+// added up by the trapezoidal rule from outside.
+func (o *orbits) radialVariance(beta float64) []float64 {
+	n := len(o.lnR)
+	out := make([]float64, n)
+	pull := func(i int) float64 {
+		return o.rho[i] * math.Exp((2*beta-1)*o.lnR[i]) * constants.G * o.mass[i]
+	}
+	step, sum := o.lnR[1]-o.lnR[0], 0.0
+	for i := n - 2; i >= 0; i-- {
+		sum += step * (pull(i) + pull(i+1)) / 2
+		out[i] = sum / (o.rho[i] * math.Exp(2*beta*o.lnR[i]))
+	}
+	return out
 }
 
 // eddington inverts ρ(ψ), both given along falling ψ. Between the points ρ is

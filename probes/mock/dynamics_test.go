@@ -44,6 +44,22 @@ func TestSpeedsAreInEquilibrium(t *testing.T) {
 	}
 }
 
+// The same with anisotropic orbits, β = 0.3 and −0.5 (mpmath at 30 digits).
+func TestVarianceOfAnisotropicOrbits(t *testing.T) {
+	o := equilibrium.Halo().orbits()
+	for _, c := range []struct{ beta, r, sigma float64 }{
+		{0, 391.3204381029728, 962.6506150569313},
+		{0.3, 391.3204381029728, 1111.065686117768}, {0.3, 1760.941971463378, 889.550066103198},
+		{-0.5, 391.3204381029728, 802.425517826722}, {-0.5, 1760.941971463378, 698.1571139824941},
+	} {
+		got := math.Sqrt(lookup(o.lnR, o.radialVariance(c.beta), math.Log(c.r)))
+		// The trapezoidal rule in steps of 1.2% in radius.
+		if math.Abs(got/c.sigma-1) > 1e-4 {
+			t.Errorf("σ_r(%.0f kpc) = %.2f for β = %g, want %.2f", c.r, got, c.beta, c.sigma)
+		}
+	}
+}
+
 // Integrated over all speeds the distribution function gives the density back.
 func TestDistributionFunctionGivesTheDensity(t *testing.T) {
 	h := equilibrium.Halo()
