@@ -110,14 +110,20 @@ func tabulate(from, to, step float64, f func(x float64) float64) table {
 }
 
 func (t table) at(lnX float64) float64 {
+	i, w := t.place(lnX)
+	v := t.values[i : i+4]
+	return w[0]*v[0] + w[1]*v[1] + w[2]*v[2] + w[3]*v[3]
+}
+
+// place returns the first of the four points around ln x and their weights.
+func (t table) place(lnX float64) (first int, w [4]float64) {
 	s := (lnX - t.from) / t.step
 	n := len(t.values)
 	s = min(max(s, 0), float64(n-1))
-	i := min(max(int(s)-1, 0), n-4)
-	d := s - float64(i)
-	a, b, c, e := d, d-1, d-2, d-3
-	v := t.values[i : i+4]
-	return -v[0]*b*c*e/6 + v[1]*a*c*e/2 - v[2]*a*b*e/2 + v[3]*a*b*c/6
+	first = min(max(int(s)-1, 0), n-4)
+	a := s - float64(first)
+	b, c, d := a-1, a-2, a-3
+	return first, [4]float64{-b * c * d / 6, a * c * d / 2, -a * b * d / 2, a * b * c / 6}
 }
 
 const (

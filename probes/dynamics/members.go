@@ -18,6 +18,7 @@ type Galaxy struct {
 	North    float64 `json:"north"`    // kpc
 	Radius   float64 `json:"radius"`   // kpc, projected
 	Velocity float64 `json:"velocity"` // km/s about the mean redshift, in the cluster's frame
+	Limit    float64 `json:"limit"`    // largest |v| that a member may have where it lies, by sigma-clip; else 0
 	Member   bool    `json:"member"`
 	Reason   string  `json:"reason"` // why it is a member or not
 }

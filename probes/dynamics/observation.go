@@ -175,8 +175,22 @@ func (a *assumptions) lnMass(theta, radii, out []float64) error {
 	return nil
 }
 
-// radius is r_200 in kpc.
-func (a *assumptions) radius(m200 float64) float64 {
+// through returns M_200c and c_200c of the NFW halo with the given mass inside
+// the radius, zeros when there is none.
+func (a *assumptions) through(t *estimate.Task, mass, radius float64, theta []float64) (m200, c float64) {
+	h, err := t.Carry(mass, estimate.Anchor{Radius: radius}, a.concentration, theta)
+	if err != nil {
+		return 0, 0
+	}
+	r200, err := halo.RadiusAt(h, a.threshold)
+	if err != nil {
+		return 0, 0
+	}
+	return 4 * math.Pi / 3 * a.threshold * r200 * r200 * r200, r200 / h.Rs
+}
+
+// radius200 is r_200 in kpc.
+func (a *assumptions) radius200(m200 float64) float64 {
 	return math.Cbrt(m200 / (4 * math.Pi / 3 * a.threshold))
 }
 
@@ -198,8 +212,13 @@ func withScatter(t *estimate.Task, width float64, source string) (*estimate.Task
 	if v := t.Settings["intrinsic_scatter"]; v.Set {
 		return t, fmt.Sprintf("intrinsic scatter of ln M: %s", v.Prior)
 	}
+	return withSetting(t, "intrinsic_scatter", method.Exactly(width)), fmt.Sprintf("intrinsic scatter of ln M: %.3f (%s)", width, source)
+}
+
+// withSetting returns the task with one setting replaced.
+func withSetting(t *estimate.Task, name string, v method.Value) *estimate.Task {
 	set := *t
 	set.Settings = maps.Clone(t.Settings)
-	set.Settings["intrinsic_scatter"] = method.Exactly(width)
-	return &set, fmt.Sprintf("intrinsic scatter of ln M: %.3f (%s)", width, source)
+	set.Settings[name] = v
+	return &set
 }

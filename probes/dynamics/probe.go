@@ -25,7 +25,7 @@ var Probe = estimate.Probe{
 	Reductions: []estimate.Reduction{{
 		Name: "members", Version: 1, From: []string{"galaxies", "members?"}, Run: reduceMembers,
 	}},
-	Methods: []estimate.Method{dispersionScaling, virial},
+	Methods: []estimate.Method{dispersionScaling, virial, projectedMass, jeans, halfLight},
 }
 
 var galaxiesBlock = method.Block{
@@ -56,9 +56,10 @@ var membersBlock = method.Block{
 			Doc: "galaxies further than this from the object's redshift are not considered (common practice, no source)",
 		},
 		{
-			Name: "gap", Kind: method.Exact, Unit: "km/s", Default: method.Exactly(1000), Low: 50, High: 10000,
-			Doc:    "velocities further apart than this belong to different systems",
-			Source: "Katgert et al. 1996, A&A 310, 8; Fadda et al. 1996, ApJ 473, 670",
+			Name: "gap", Kind: method.Exact, Unit: "km/s", Low: 50, High: 10000,
+			Doc: "velocities further apart than this belong to different systems. Silent: 1000 km/s in the field as a whole and, for the shifting gapper, " +
+				"500 (1 + exp(−(N−6)/33)) km/s in a bin of N galaxies, for a fixed gap of 1000 km/s (Fadda et al. 1996) finds no edge in dense samples",
+			Source: "Katgert et al. 1996, A&A 310, 8; Adami et al. 1998, A&A 331, 439 (formula from memory); Lopes et al. 2009, MNRAS 392, 135",
 		},
 		{
 			Name: "clip", Kind: method.Exact, Default: method.Exactly(2.7), Low: 1, High: 10,

@@ -107,17 +107,20 @@ func TestScalingRelations(t *testing.T) {
 	}
 }
 
-func TestVirialMass(t *testing.T) {
+func TestVirialAndProjectedMass(t *testing.T) {
 	var file struct {
 		XYV          [][3]float64
 		Sigma        float64
 		VirialRadius float64 `json:"virial_radius"`
 		VirialMass   float64 `json:"virial_mass"`
+		Isotropic    float64 `json:"projected_isotropic"`
+		Radial       float64 `json:"projected_radial"`
 	}
 	published(t, "estimators.json", &file)
 	var galaxies []Galaxy
-	var v []float64
+	var v, r []float64
 	for _, row := range file.XYV {
+		r = append(r, math.Hypot(row[0], row[1]))
 		galaxies = append(galaxies, Galaxy{East: row[0], North: row[1], Weight: 1})
 		v = append(v, row[2])
 	}
@@ -125,6 +128,12 @@ func TestVirialMass(t *testing.T) {
 	near(t, "σ", sigma, file.Sigma, 1e-10)
 	near(t, "R_PV", p.radius, file.VirialRadius, 1e-10)
 	near(t, "virial mass", VirialMass(sigma, p.radius), file.VirialMass, 1e-10)
+	mean, _ := meanAndSpread(v, nil)
+	for i := range v {
+		v[i] -= mean
+	}
+	near(t, "projected mass, isotropic", ProjectedMass(v, r, 0), file.Isotropic, 1e-10)
+	near(t, "projected mass, radial", ProjectedMass(v, r, 1), file.Radial, 1e-10)
 }
 
 func TestIsotropicHaloKinematics(t *testing.T) {

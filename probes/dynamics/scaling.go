@@ -74,7 +74,7 @@ func runScaling(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
 	factors, masses := make([]float64, len(drawn.Values)), make([]float64, len(drawn.Values))
 	for i, theta := range drawn.Values {
 		masses[i] = theta[a.solved]
-		factors[i] = apertureFactor(s.los, a.halo(theta).Rs, a.radius(masses[i])/a.halo(theta).Rs)
+		factors[i] = apertureFactor(s.los, a.halo(theta).Rs, a.radius200(masses[i])/a.halo(theta).Rs)
 	}
 	mass := infer.Percentiles(masses, 16, 50, 84)
 	width, source := s.scatter(t)
@@ -84,7 +84,7 @@ func runScaling(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
 	}
 	return task.Finish(estimate.Fit{
 		Sample: drawn, Parameters: &a.parameters, LnMass: a.lnMass,
-		Covers:   [2]float64{a.radius(mass[0]), a.radius(mass[2])},
+		Covers:   [2]float64{a.radius200(mass[0]), a.radius200(mass[2])},
 		Assumes:  append(obs.assumes, append(s.assumes(factors), scatter, a.concentrationLine(t))...),
 		Checks:   obs.checks,
 		Warnings: obs.warnings,
@@ -108,7 +108,7 @@ func (s *scaling) solve(theta []float64) (m200, c float64) {
 	m200 = s.relation.mass(sigma, s.h)
 	for range 60 {
 		c = s.concentration.Of(theta, m200)
-		next := s.relation.mass(sigma*apertureFactor(s.los, s.radius(m200)/c, c), s.h)
+		next := s.relation.mass(sigma*apertureFactor(s.los, s.radius200(m200)/c, c), s.h)
 		if math.Abs(next-m200) < 1e-12*m200 {
 			break
 		}

@@ -126,6 +126,7 @@ type candidate struct {
 	redshift float64 //
 	radius   float64 // kpc
 	velocity float64 // km/s about the current mean
+	limit    float64 // km/s, for sigma-clip
 	member   bool
 }
 
@@ -133,7 +134,10 @@ type candidate struct {
 // object's redshift, the group of velocities without a gap that the object
 // belongs to, then the named method inside it.
 func (f *field) clean(name string, window float64) error {
-	gap := f.number("gap")
+	gap := 1000.0
+	if v := f.settings["gap"]; v.Set {
+		gap = v.Prior.A
+	}
 	var inside []candidate
 	for i := range f.galaxies {
 		g := &f.galaxies[i]
@@ -168,7 +172,8 @@ func (f *field) clean(name string, window float64) error {
 		return err
 	}
 	for k, c := range group {
-		f.galaxies[c.index].Member, f.galaxies[c.index].Reason = c.member, reasons[k]
+		g := &f.galaxies[c.index]
+		g.Member, g.Reason, g.Limit = c.member, reasons[k], c.limit
 	}
 	return nil
 }

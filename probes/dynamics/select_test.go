@@ -109,7 +109,7 @@ func TestShiftingGapperAgainstBruteForce(t *testing.T) {
 		}
 		sortByRadius(group)
 		out := map[int]bool{}
-		for _, k := range gapped(group, gap, width, enough) {
+		for _, k := range gapped(group, func(int) float64 { return gap }, width, enough) {
 			out[k] = true
 		}
 		for k, c := range group {
@@ -181,6 +181,34 @@ func joinedToMean(velocities []float64, v, gap float64) bool {
 		last = x
 	}
 	return false
+}
+
+// Where the field is too dense for gaps, the list says so.
+func TestDenseFieldIsSaid(t *testing.T) {
+	c := invented.Motions(mock.Motions{Members: 300, Field: 250, Radius: within(invented, 1)}, rand.New(rand.NewPCG(4, 4)))
+	task := weighing(t, invented, tableOf(c), "shifting-gapper")
+	task.Blocks["members"]["gap"] = method.Exactly(1000)
+	m, err := reduced(t, task)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if !warned(m.Warnings, "no gap cuts it off") {
+		t.Errorf("warnings %q", m.Warnings)
+	}
+	if m, err = reduced(t, weighing(t, invented, tableOf(c), "sigma-clip")); err != nil {
+		t.Fatal(err)
+	}
+	if warned(m.Warnings, "no gap cuts it off") {
+		t.Errorf("warnings %q", m.Warnings)
+	}
+}
+
+// 1000, 881 and 529 km/s for 6, 15 and 100 galaxies, by hand.
+func TestDensityGap(t *testing.T) {
+	near(t, "gap of 6", densityGap(6), 1000, 1e-12)
+	near(t, "gap of 15", densityGap(15), 880.6, 1e-3)
+	near(t, "gap of 100", densityGap(100), 529.0, 1e-3)
+	near(t, "gap of 2", densityGap(2), 1000, 1e-12)
 }
 
 // The cluster's redshift picks the group, not the number of galaxies.

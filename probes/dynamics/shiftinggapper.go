@@ -2,7 +2,9 @@ package dynamics
 
 import (
 	"fmt"
+	"math"
 	"math/bits"
+	"slices"
 	"sort"
 )
 
@@ -10,10 +12,13 @@ import (
 // that a gap in velocity separates from the cluster's body (Fadda et al. 1996).
 // A bin centred on each galaxy is 0.4 h⁻¹ Mpc wide or wide enough to hold 15
 // galaxies; its body grows from the mean velocity outwards until two neighbours
-// lie more than 1000 km/s apart. Rounds follow until the members stay the same.
+// lie further apart than the gap. Rounds follow until the members stay the same.
 func (f *field) shiftingGapper(group []candidate) ([]string, error) {
-	gap, fewestInBin := f.number("gap"), int(f.number("bin_count"))
-	width := f.number("bin_width")
+	gap, says := densityGap, "gap by density (Adami et al. 1998)"
+	if v := f.settings["gap"]; v.Set {
+		gap, says = func(int) float64 { return v.Prior.A }, fmt.Sprintf("gap %.0f km/s", v.Prior.A)
+	}
+	fewestInBin, width := int(f.number("bin_count")), f.number("bin_width")
 	if !f.settings["bin_width"].Set {
 		width = 400 / (f.task.Cosmology.Params().HubbleConstant / 100)
 	}
@@ -22,22 +27,48 @@ func (f *field) shiftingGapper(group []candidate) ([]string, error) {
 	for k := range reasons {
 		reasons[k] = "part of the body at its radius"
 	}
+	var velocities []float64
 	err := f.settle(group, func() error {
-		recentre(group)
+		velocities = recentre(group)
 		for _, k := range gapped(group, gap, width, fewestInBin) {
 			group[k].member = false
-			reasons[k] = fmt.Sprintf("%+.0f km/s, behind a gap of %.0f km/s at %.0f kpc", group[k].velocity, gap, group[k].radius)
+			reasons[k] = fmt.Sprintf("%+.0f km/s, behind a gap at %.0f kpc", group[k].velocity, group[k].radius)
 		}
 		return nil
 	})
-	f.note("members: %d galaxies by the shifting gapper, gap %.0f km/s, bins of %.0f kpc or %d galaxies (Fadda et al. 1996)",
-		countMembers(group), gap, width, fewestInBin)
+	f.note("members: %d galaxies by the shifting gapper, %s, bins of %.0f kpc or %d galaxies (Fadda et al. 1996)",
+		len(velocities), says, width, fewestInBin)
+	if err == nil {
+		f.crowded(group)
+	}
 	return reasons, err
+}
+
+// densityGap is the gap in km/s that separates systems among n velocities, 500
+// (1 + exp(−(n−6)/33)) (Adami et al. 1998; formula from memory), at most 1000.
+func densityGap(n int) float64 {
+	return math.Min(1000, 500*(1+math.Exp(-float64(n-6)/33)))
+}
+
+// crowded warns when clipping would reject many of the members: then the field
+// is too dense to leave gaps.
+func (f *field) crowded(group []candidate) {
+	trial := *f // notes and warnings of the trial are not wanted
+	again := append([]candidate(nil), group...)
+	again = slices.DeleteFunc(again, func(c candidate) bool { return !c.member })
+	before := len(again)
+	if err := trial.clipped(again, f.number("clip")); err != nil {
+		return // so few members that nothing can be said
+	}
+	if beyond := before - countMembers(again); beyond > 3 && 20*beyond > before {
+		f.warn("%d of the %d members lie beyond %.3g times the local dispersion: the field is so dense that no gap cuts it off; `members { method = \"sigma-clip\" }` does",
+			beyond, before, f.number("clip"))
+	}
 }
 
 // gapped returns the members of a group, sorted by radius, that lie outside the
 // velocity body of the bin around them.
-func gapped(group []candidate, gap, width float64, fewestInBin int) []int {
+func gapped(group []candidate, gap func(n int) float64, width float64, fewestInBin int) []int {
 	var members []int // positions in group, by radius
 	for k, c := range group {
 		if c.member {
@@ -73,7 +104,7 @@ func gapped(group []candidate, gap, width float64, fewestInBin int) []int {
 		for ; to > hi; to-- {
 			set.remove(rank[members[to-1]])
 		}
-		if !set.reaches(velocities, zero, rank[k], gap) {
+		if !set.reaches(velocities, zero, rank[k], gap(hi-lo)) {
 			out = append(out, k)
 		}
 	}

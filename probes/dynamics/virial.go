@@ -7,7 +7,6 @@ import (
 
 	"steelyard/probes/constants"
 	"steelyard/probes/estimate"
-	"steelyard/probes/halo"
 	"steelyard/probes/infer"
 	"steelyard/probes/method"
 )
@@ -168,17 +167,11 @@ func (v *virialised) solve(theta []float64) (m200, c float64) {
 		math.Pow(v.elongation.Of(theta), varianceElongation+radiusElongation)
 	inside := 1.0
 	for range 30 {
-		h, err := v.task.Carry(mass*inside, estimate.Anchor{Radius: v.aperture}, v.concentration, theta)
-		if err != nil {
+		if m200, c = v.through(v.task, mass*inside, v.aperture, theta); m200 == 0 {
 			return 0, 0
 		}
-		r200, err := halo.RadiusAt(h, v.threshold)
-		if err != nil {
-			return 0, 0
-		}
-		m200, c = 4*math.Pi/3*v.threshold*r200*r200*r200, r200/h.Rs
 		was := inside
-		inside = v.inside(h.Rs)
+		inside = v.inside(v.radius200(m200) / c)
 		if math.Abs(inside-was) < 1e-9 {
 			break
 		}
