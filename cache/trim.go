@@ -19,7 +19,7 @@ import (
 type Trim struct {
 	Before  time.Time // what was last used before then goes
 	Recipes []string  // what only these recipes used last goes
-	Bytes   int64     // then the longest unused goes until outputs and records are no more than this; 0 means no limit
+	Bytes   int64     // then the longest unused goes until the folder is no larger than this; 0 means no limit
 }
 
 // Trimmed is what a trim removed.
@@ -33,12 +33,33 @@ type Trimmed struct {
 // removed is computed again when it is needed.
 func (s *Store) Trim(t Trim) (*Trimmed, error) {
 	before, err := s.bytes()
-	if err != nil {
-		return nil, err
+	if err != nil || before == 0 {
+		return &Trimmed{}, err
 	}
-	if before == 0 {
-		return &Trimmed{}, nil
+	trimmed := &Trimmed{}
+	// The database takes more than what is in it: once it is seen how much
+	// more, less is kept.
+	for pass := t; ; {
+		records, held, err := s.trim(pass)
+		if err != nil {
+			return trimmed, err
+		}
+		after, err := s.bytes()
+		if err != nil {
+			return trimmed, err
+		}
+		trimmed.Records += records
+		trimmed.Bytes = before - after
+		if t.Bytes <= 0 || after <= t.Bytes || pass.Bytes == 1 {
+			return trimmed, nil
+		}
+		pass.Bytes = max(1, held-(after-t.Bytes))
 	}
+}
+
+// trim removes what is to go, in one transaction, and compacts the database.
+// Here t.Bytes counts outputs and records only, like the bytes still held.
+func (s *Store) trim(t Trim) (records int, held int64, err error) {
 	var victims []Key
 	err = s.update(func(tx *bolt.Tx) error {
 		in, err := inventoryOf(tx)
@@ -46,6 +67,7 @@ func (s *Store) Trim(t Trim) (*Trimmed, error) {
 			return err
 		}
 		victims = in.choose(t)
+		held = in.bytes
 		for _, k := range victims {
 			if err := in.remove(tx, k); err != nil {
 				return err
@@ -54,19 +76,15 @@ func (s *Store) Trim(t Trim) (*Trimmed, error) {
 		return errors.Join(in.removeNames(tx, t.Recipes), in.removeSmall(tx), s.removeFiles(in))
 	})
 	if err != nil {
-		return nil, err
+		return 0, 0, err
 	}
 	s.gate.Lock()
 	err = s.compact()
 	s.gate.Unlock()
 	if err != nil {
-		return nil, err
+		return 0, 0, err
 	}
-	if err := s.removeLeftovers(); err != nil {
-		return nil, err
-	}
-	after, err := s.bytes()
-	return &Trimmed{len(victims), before - after}, err
+	return len(victims), held, s.removeLeftovers()
 }
 
 // inventory is what the database holds, as far as trimming needs to know.

@@ -113,19 +113,31 @@ func TestTrimGivesSpaceBack(t *testing.T) {
 func TestTrimBySize(t *testing.T) {
 	c := &clock{time.Unix(1e9, 0)}
 	s := open(t, t.TempDir(), Options{Now: c.Now})
-	for i := range 20 { // every seventh from 3 is 72 kB
+	for i := range 40 { // five from the tenth on are 72 kB
 		fill(s, i, i+1)
 		c.now = c.now.Add(time.Minute)
 	}
-	trimmed, err := s.Trim(Trim{Bytes: 100e3})
-	if err != nil {
-		t.Fatal(err)
+	size := func() int64 { u, _ := s.Size(); return u.Bytes }
+	for _, limit := range []int64{400e3, 300e3, 200e3} {
+		trimmed, err := s.Trim(Trim{Bytes: limit})
+		left := present(s, 40)
+		if err != nil || trimmed.Records == 0 || size() > limit || len(left) == 0 {
+			t.Fatalf("to %d: %+v, %v; %d bytes, left are %v", limit, trimmed, err, size(), left)
+		}
+		for i, e := range left { // the longest unused went, and no more than needed
+			if e != 40-len(left)+i {
+				t.Errorf("to %d: left are %v", limit, left)
+			}
+		}
+		if size() < limit-110e3 {
+			t.Errorf("to %d: only %d bytes are left", limit, size())
+		}
+		if trimmed, err = s.Trim(Trim{Bytes: limit}); err != nil || trimmed.Records != 0 {
+			t.Errorf("trimmed again: %+v, %v", trimmed, err)
+		}
 	}
-	if got := fmt.Sprint(present(s, 20)); got != "[11 12 13 14 15 16 17 18 19]" || trimmed.Records != 11 {
-		t.Errorf("left are %s; %+v", got, trimmed)
-	}
-	if trimmed, err = s.Trim(Trim{Bytes: 100e3}); err != nil || trimmed.Records != 0 {
-		t.Errorf("trimmed again: %+v, %v", trimmed, err)
+	if trimmed, err := s.Trim(Trim{Bytes: 1}); err != nil || len(present(s, 40)) != 0 || trimmed.Records == 0 {
+		t.Errorf("to nothing: %+v, %v", trimmed, err)
 	}
 }
 

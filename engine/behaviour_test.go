@@ -368,12 +368,13 @@ func TestSameQuestionIsComputedOnce(t *testing.T) {
 }
 
 func TestVerify(t *testing.T) {
-	s := openStore(t, t.TempDir())
+	dir := t.TempDir()
+	s := openStore(t, dir)
 	var runs atomic.Int32
 	counting := work("counting", []string{"steady"}, func(context.Context, Job) ([]byte, error) {
 		return fmt.Append(nil, "run ", runs.Add(1)), nil
 	})
-	g := mustGraph(t, work("steady", nil, text("steady")), counting, work("below", []string{"counting"}, text("below")))
+	g := mustGraph(t, work("steady", nil, text("a steady output")), counting, work("below", []string{"counting"}, text("below")))
 	mustRun(t, g, s, Options{})
 	r := mustRun(t, g, s, Options{Verify: func(string) bool { return true }})
 	wantStates(t, r, "steady reused\ncounting failed\nbelow reused")
@@ -383,6 +384,16 @@ func TestVerify(t *testing.T) {
 	r = mustRun(t, g, s, Options{Verify: func(id string) bool { return id == "steady" }})
 	if !r.Result("steady").Verified || r.Result("counting").Verified || r.Err() != nil {
 		t.Error(states(r))
+	}
+	s.Close()
+	spoilOutputs(t, dir, "a steady output")
+	s = openStore(t, dir)
+	r = mustRun(t, g, s, Options{Verify: func(id string) bool { return id == "steady" }})
+	if w := strings.Join(r.Warnings(), "\n"); !r.Result("steady").Verified || !strings.Contains(w, "the output of steady was stored again: its stored bytes are damaged") {
+		t.Error(states(r), w)
+	}
+	if out, err := r.Output(t.Context(), "steady"); string(out) != "a steady output" || err != nil {
+		t.Errorf("%q, %v", out, err)
 	}
 }
 
@@ -401,11 +412,10 @@ func spoilOutputs(t *testing.T, dir string, outputs ...string) {
 			os.WriteFile(file, append([]byte("x"), o[1:]...), 0o666)
 			continue
 		}
-		i := bytes.Index(b, []byte(o))
-		if i < 0 {
+		if !bytes.Contains(b, []byte(o)) {
 			t.Fatalf("%q is not stored", o)
 		}
-		b[i] ^= 1
+		b = bytes.ReplaceAll(b, []byte(o), append([]byte{o[0] ^ 1}, o[1:]...)) // older pages hold copies
 	}
 	os.WriteFile(path, b, 0o666)
 }

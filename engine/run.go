@@ -232,7 +232,14 @@ func (r *run) work(ctx context.Context, i, workers int) {
 		default: // the loop is busy: the next report will do
 		}
 	}
+	verify := r.steps[i].state == Reused
 	m.record, m.output, m.err = r.compute(ctx, i, workers, r.output, report)
+	if verify && m.err == nil && cache.DigestOf(m.output) == r.steps[i].digest {
+		if _, err := r.store.Output(r.steps[i].digest); err != nil {
+			r.store.Put(m.record, m.output)
+			r.tellWarning(fmt.Sprintf("the output of %s was stored again: %v", r.graph.nodes[i].ID, err))
+		}
+	}
 }
 
 // tell sends a message unless the run is over.
