@@ -30,6 +30,7 @@ var blocks = []method.Block{
 			{Name: "e2", Required: true, Doc: "ellipticity along the diagonals: positive as `handedness` says"},
 			{Name: "weight", Doc: "weight of the shape; without it every galaxy weighs the same"},
 			{Name: "redshift", Doc: "redshift of the galaxy; without it `source_redshift` or `sources`"},
+			{Name: "multiplicative", Doc: "multiplicative bias m of the galaxy's shape: the shear is Σ w e / Σ w (1+m)"},
 		},
 		Settings: []method.Setting{
 			{
@@ -39,6 +40,19 @@ var blocks = []method.Block{
 					"is drawn out from south-east to north-west",
 			},
 			sourceRedshift,
+			{
+				Name: "additive_e1", Kind: method.Exact, Low: -1, High: 1, Default: method.Exactly(0),
+				Doc: "additive bias of e1, taken off every shape",
+			},
+			{
+				Name: "additive_e2", Kind: method.Exact, Low: -1, High: 1, Default: method.Exactly(0),
+				Doc: "additive bias of e2 as it stands in the file, taken off every shape",
+			},
+			{
+				Name: "responsivity", Kind: method.Exact, Low: 0.01, High: 10, Default: method.Exactly(1),
+				Doc:    "mean shape that a unit shear makes: 1 for (a−b)/(a+b), for (a²−b²)/(a²+b²) about 2(1−σ²), σ being the scatter of one component. Shears and their errors are divided by it",
+				Source: "Bernstein & Jarvis 2002, AJ 123, 583",
+			},
 		},
 		Blocks:       []method.Block{sourcesBlock},
 		Alternatives: [][][]string{{{"redshift"}, {"source_redshift"}, {"sources"}}},

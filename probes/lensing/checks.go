@@ -99,6 +99,9 @@ func (p *Profile) checks(expected []float64) (checks []infer.Check, warnings []s
 			Name: "fewest sources in a bin", Statistic: float64(fewest.Sources), PValue: -1, Passed: fewest.Sources >= sparse,
 		}, fmt.Sprintf("only %d sources between %.4g and %.4g kpc: their mean is hardly normal", fewest.Sources, fewest.Inner, fewest.Outer))
 	}
+	if p.Counted {
+		add(p.turnedCheck())
+	}
 	beyond := 0
 	for _, g := range expected {
 		if math.Abs(g) > strong {
@@ -147,4 +150,24 @@ func handedness(s, flipped float64) (infer.Check, string) {
 		Note: "the tangential signal-to-noise if e1, e2 or both had the other sign",
 	}
 	return c, fmt.Sprintf("the tangential signal-to-noise is %.1f, but %.1f with %s", s, best, what)
+}
+
+// turnedCheck compares the errors with those that turning every shape at random
+// would give. The two differ where one bin's shapes scatter unlike the others';
+// σ² of n sources is itself known to 1/n of it, or to a few times that when
+// weights differ.
+func (p *Profile) turnedCheck() (infer.Check, string) {
+	worst, at, passed := 1.0, p.Bins[0], true
+	for _, b := range p.Bins {
+		r := b.Turned / b.Error()
+		if math.Abs(math.Log(r)) > math.Abs(math.Log(worst)) {
+			worst, at = r, b
+		}
+		if math.Abs(r-1) > 0.1+4/math.Sqrt(float64(b.Sources)) {
+			passed = false
+		}
+	}
+	return infer.Check{
+		Name: "error by turned shapes over error", Statistic: worst, PValue: -1, Passed: passed, Note: "in the bin where they differ most",
+	}, fmt.Sprintf("between %.4g and %.4g kpc turning every shape at random gives %.2f times the error: the shapes there scatter unlike those of the other bins", at.Inner, at.Outer, worst)
 }

@@ -15,6 +15,10 @@ type shapes struct {
 	ra, dec, e1, e2 []float64
 	weight          []float64 // nil: all equal
 	redshift        []float64 // nil: beta and beta2 hold for every source
+	bias            []float64 // multiplicative, of each shape; nil: none
+	additive1       float64   // taken off e1
+	additive2       float64   // and off e2, as in the file
+	responsivity    float64
 	beta, beta2     float64
 	efficiencies    *efficiencies // of redshift
 	mirror          float64       // −1 when the x axis of the shapes points west, else 1
@@ -62,9 +66,13 @@ func newShapes(t *estimate.Task) (*shapes, error) {
 	s := &shapes{
 		file: table.File, rows: table.Rows,
 		ra: table.Values("ra"), dec: table.Values("dec"), e1: table.Values("e1"), e2: table.Values("e2"),
-		weight: table.Values("weight"), redshift: table.Values("redshift"),
+		weight: table.Values("weight"), redshift: table.Values("redshift"), bias: table.Values("multiplicative"),
+		additive1: block["additive_e1"].Prior.A, additive2: block["additive_e2"].Prior.A, responsivity: 1,
 		mirror: 1, centre: newCentre(t.Object.RA, t.Object.Dec),
 		distance: t.Cosmology.AngularDiameter(t.Object.Redshift),
+	}
+	if r := block["responsivity"]; r.Set {
+		s.responsivity = r.Prior.A
 	}
 	if block["handedness"].Text == "west" {
 		s.mirror = -1
@@ -102,7 +110,9 @@ func newShapes(t *estimate.Task) (*shapes, error) {
 //
 // with σ_e the dispersion of one component about its bin's mean, weighted by w²
 // and taken over both components and all bins together, which leaves it right
-// when the weights follow each galaxy's own noise.
+// when the weights follow each galaxy's own noise. Turning all shapes at random
+// would scatter the mean by (Σ w² |e|²/2)^½ / Σw, bin by bin, which is kept
+// beside it for a check. All are then calibrated.
 func (s *shapes) profile(total *sums) (*Profile, error) {
 	if total.weight == 0 {
 		return nil, fmt.Errorf("%s: every weight is zero", s.file)
@@ -132,11 +142,16 @@ func (s *shapes) profile(total *sums) (*Profile, error) {
 			p.Warnings = append(p.Warnings, fmt.Sprintf("%s: no galaxy between %.4g and %.4g kpc; that bin is left out", s.file, inner, outer))
 			continue
 		}
-		sigma := dispersion * math.Sqrt(a.w2) / a.w
+		if !(a.calibrated > 0) {
+			return nil, fmt.Errorf("%s: the multiplicative biases between %.4g and %.4g kpc leave no shear", s.file, inner, outer)
+		}
+		unit := a.calibrated * s.responsivity // what a unit shear adds up to
+		sigma := dispersion * math.Sqrt(a.w2) / unit
 		p.Bins = append(p.Bins, Bin{
 			Inner: inner, Outer: outer, Mean: a.radius / a.w,
-			Shear: a.tangential / a.w, Minus: sigma, Plus: sigma, Cross: a.cross / a.w, Flipped: a.flipped / a.w,
-			Beta: a.beta / a.w, Beta2: a.beta2 / a.w, Sources: a.n, Weight: a.w,
+			Shear: a.tangential / unit, Minus: sigma, Plus: sigma, Cross: a.cross / unit, Flipped: a.flipped / unit,
+			Turned: math.Sqrt(a.square2/2) / unit,
+			Beta:   a.beta / a.w, Beta2: a.beta2 / a.w, Sources: a.n, Weight: a.w,
 			Nodes: momentNodes(a.place[:], inner, outer),
 		})
 	}

@@ -302,6 +302,62 @@ func TestEffectiveRedshift(t *testing.T) {
 	}
 }
 
+// TestCalibration undoes what was done to the shapes of a catalogue.
+func TestCalibration(t *testing.T) {
+	few := deep
+	few.Galaxies = 3000
+	few.Quiet, few.Noisy = 0.1, 0.2
+	plain := reduced(t, shapeTask(t, curlew, curlew.Shapes(few, rand.New(rand.NewPCG(14, 15)))))
+	c := curlew.Shapes(few, rand.New(rand.NewPCG(14, 15)))
+	bias := make([]float64, len(c.E1))
+	for i := range bias {
+		bias[i] = -0.1
+		c.E1[i] = 0.9*0.8*c.E1[i] + 0.01
+		c.E2[i] = 0.9*0.8*c.E2[i] - 0.02
+	}
+	task := shapeTask(t, curlew, c)
+	g := task.Tables["galaxies"]
+	g.Columns = append(g.Columns, column("multiplicative", "", bias...))
+	task.Blocks["galaxies"]["additive_e1"] = method.Exactly(0.01)
+	task.Blocks["galaxies"]["additive_e2"] = method.Exactly(-0.02)
+	task.Blocks["galaxies"]["responsivity"] = method.Exactly(0.8)
+	for i, b := range reduced(t, task).Bins {
+		near(t, "shear", b.Shear, plain.Bins[i].Shear, 1e-9) // rounding of small means
+		near(t, "error", b.Plus, plain.Bins[i].Plus, 1e-9)
+		near(t, "turned", b.Turned, plain.Bins[i].Turned, 1e-9)
+	}
+	bias[7] = -1
+	_, err := reduce(context.Background(), task)
+	refused(t, "no response", err, "shapes.fits, row 8", "multiplicative")
+}
+
+// TestTurned turns the shapes of a catalogue at random, many times, and compares
+// the scatter of the shear with what the reduction says it would be.
+func TestTurned(t *testing.T) {
+	few := deep
+	few.Galaxies = 1500
+	rng := rand.New(rand.NewPCG(16, 17))
+	c := curlew.Shapes(few, rng)
+	task := shapeTask(t, curlew, c)
+	task.Blocks["bins"] = logBins(300, 3000, 3)
+	said := reduced(t, task).Bins
+	const times = 400
+	square := make([]float64, 3)
+	for range times {
+		for i := range c.E1 {
+			s, k := math.Sincos(2 * math.Pi * rng.Float64())
+			c.E1[i], c.E2[i] = k*c.E1[i]-s*c.E2[i], s*c.E1[i]+k*c.E2[i]
+		}
+		for i, b := range reduced(t, task).Bins {
+			square[i] += b.Shear * b.Shear / times
+		}
+	}
+	for i, b := range said {
+		// The variance of 400 scatters by (2/400)^½; four of those, half for σ.
+		near(t, "scatter of turned shapes", math.Sqrt(square[i]), b.Turned, 2*math.Sqrt(2.0/times))
+	}
+}
+
 func TestBinEdges(t *testing.T) {
 	span := func(numbers ...float64) method.Value { return method.Value{Set: true, Unit: "kpc", Numbers: numbers} }
 	for _, x := range []struct {

@@ -21,6 +21,7 @@ type annulus struct {
 	w, w2                        float64 // Σ w, Σ w²
 	tangential, cross, flipped   float64 // Σ w e; flipped is tangential with e2 reversed
 	tangential2, cross2, square2 float64 // Σ w² e_t, Σ w² e_x, Σ w² (e_t² + e_x²)
+	calibrated                   float64 // Σ w (1+m)
 	radius, beta, beta2          float64 // Σ w R, Σ w β, Σ w β²
 	place                        [moments]float64
 }
@@ -35,6 +36,7 @@ func (a *annulus) add(b *annulus) {
 	a.tangential2 += b.tangential2
 	a.cross2 += b.cross2
 	a.square2 += b.square2
+	a.calibrated += b.calibrated
 	a.radius += b.radius
 	a.beta += b.beta
 	a.beta2 += b.beta2
@@ -123,7 +125,11 @@ func (s *shapes) sum(from, to int) sums {
 			beta = s.efficiencies.at(s.redshift[i])
 			beta2 = beta * beta
 		}
-		e1, e2 := s.e1[i], s.mirror*s.e2[i]
+		e1, e2 := s.e1[i]-s.additive1, s.mirror*(s.e2[i]-s.additive2)
+		m := 0.0
+		if s.bias != nil {
+			m = s.bias[i]
+		}
 		tangential, cross := at.components(e1, e2)
 		flipped, _ := at.components(e1, -e2)
 		a := &part.bins[j]
@@ -136,6 +142,7 @@ func (s *shapes) sum(from, to int) sums {
 		a.tangential2 += w * w * tangential
 		a.cross2 += w * w * cross
 		a.square2 += w * w * (tangential*tangential + cross*cross)
+		a.calibrated += w * (1 + m)
 		a.radius += w * r
 		a.beta += w * beta
 		a.beta2 += w * beta2
@@ -153,6 +160,8 @@ func (s *shapes) check(i int, w float64) error {
 	switch e := math.Hypot(s.e1[i], s.e2[i]); {
 	case !(e < 1):
 		return fmt.Errorf("%s, row %d: an ellipticity of %.4g, where (a−b)/(a+b) is below 1; leave out such rows with `select`, or convert shapes measured as (a²−b²)/(a²+b²)", s.file, s.rows[i], e)
+	case s.bias != nil && !(s.bias[i] > -1):
+		return fmt.Errorf("%s, row %d: a multiplicative bias of %g leaves no shear", s.file, s.rows[i], s.bias[i])
 	case !(w >= 0):
 		return fmt.Errorf("%s, row %d: weight %g is below zero", s.file, s.rows[i], w)
 	case !(math.Abs(s.dec[i]) <= math.Pi/2):

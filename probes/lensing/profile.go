@@ -15,7 +15,7 @@ type Profile struct {
 	Covariance []float64
 	HasCross   bool
 	// Counted says that the bins were filled here from a catalogue, so that
-	// their Sources and Flipped hold.
+	// their Sources, Flipped and Turned hold.
 	Counted  bool
 	Warnings []string
 }
@@ -28,6 +28,7 @@ type Bin struct {
 	Minus, Plus  float64 // sizes of its errors below and above
 	Cross        float64
 	Flipped      float64 // Shear with the sign of e2 reversed
+	Turned       float64 // scatter of Shear were every shape turned at random
 	Beta, Beta2  float64 // ⟨β⟩ and ⟨β²⟩ of the sources, relative to a source at infinity
 	Sources      int
 	Weight       float64
@@ -41,7 +42,7 @@ type Node struct{ Radius, Share float64 }
 // Error is the mean of the two errors.
 func (b Bin) Error() float64 { return (b.Minus + b.Plus) / 2 }
 
-const profileFormat = "steelyard/lensing/profile/1\n"
+const profileFormat = "steelyard/lensing/profile/2\n"
 
 // MarshalBinary encodes the profile: equal profiles give equal bytes.
 func (p *Profile) MarshalBinary() ([]byte, error) {
@@ -66,7 +67,7 @@ func (p *Profile) MarshalBinary() ([]byte, error) {
 	flag(p.Counted)
 	count(len(p.Bins))
 	for _, b := range p.Bins {
-		number(b.Inner, b.Outer, b.Mean, b.Shear, b.Minus, b.Plus, b.Cross, b.Flipped, b.Beta, b.Beta2, b.Weight)
+		number(b.Inner, b.Outer, b.Mean, b.Shear, b.Minus, b.Plus, b.Cross, b.Flipped, b.Turned, b.Beta, b.Beta2, b.Weight)
 		count(b.Sources)
 		count(len(b.Nodes))
 		for _, n := range b.Nodes {
@@ -93,7 +94,7 @@ func (p *Profile) UnmarshalBinary(data []byte) error {
 	p.Bins = make([]Bin, r.length(8))
 	for i := range p.Bins {
 		b := &p.Bins[i]
-		for _, x := range []*float64{&b.Inner, &b.Outer, &b.Mean, &b.Shear, &b.Minus, &b.Plus, &b.Cross, &b.Flipped, &b.Beta, &b.Beta2, &b.Weight} {
+		for _, x := range []*float64{&b.Inner, &b.Outer, &b.Mean, &b.Shear, &b.Minus, &b.Plus, &b.Cross, &b.Flipped, &b.Turned, &b.Beta, &b.Beta2, &b.Weight} {
 			*x = r.number()
 		}
 		b.Sources = int(r.count())

@@ -10,7 +10,7 @@ import (
 
 // profileReduction makes the profile that every method of shear fits.
 var profileReduction = estimate.Reduction{
-	Name: "profile", Version: 1,
+	Name: "profile", Version: 2,
 	From: []string{"galaxies?", "galaxies.sources?", "bins?", "profile?", "profile.sources?", "profile.covariance?"},
 	Run: func(ctx context.Context, t *estimate.Task) (encoding.BinaryMarshaler, error) {
 		p, err := reduce(ctx, t)
