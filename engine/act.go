@@ -37,6 +37,9 @@ func (r *run) act(ctx context.Context, m message) (ready []int) {
 	case Warning:
 		r.note(m.text)
 	case Progress:
+		if _, running := r.working[m.step]; !running { // a goroutine it left behind
+			break
+		}
 		r.emit(Event{Type: Progress, Node: n.ID, Kind: n.Kind, Done: m.done, Expected: s.expected})
 	case Finished:
 		delete(r.working, m.step)

@@ -1,6 +1,14 @@
 // Package engine runs a graph of cached nodes. It knows no astronomy: a node is
 // a pure function from bytes to bytes, known by its kind, the kind's version,
 // its parameters and the digests of what it reads.
+//
+// NewGraph checks a set of nodes, Inspect says what running them would do and
+// why, Run does it and gives a Report, Explain says why a node was last computed
+// again. A node's key is the hash of a readable transcript (key.go); because
+// it holds the digests of the inputs' outputs, a rerun stops where an output
+// comes out as it was. A node counts as finished when its output is committed
+// to the store, so that a run can be interrupted or killed at any instant and
+// taken up again.
 package engine
 
 import "context"

@@ -217,13 +217,13 @@ func (r *run) start(ctx context.Context) {
 		}
 		workers := r.o.Workers / min(r.o.Workers, len(r.working)+r.ready.Len())
 		r.emit(Event{Type: Started, Node: n.ID, Kind: n.Kind, Expected: s.expected})
-		go r.work(ctx, i, workers)
+		go r.work(ctx, i, workers, s.state == Reused)
 	}
 }
 
-// work computes a step and tells the loop, even should the node end its
-// goroutine.
-func (r *run) work(ctx context.Context, i, workers int) {
+// work computes a step, or verifies a reused one, and tells the loop, even
+// should the node end its goroutine.
+func (r *run) work(ctx context.Context, i, workers int, verify bool) {
 	m := message{step: i, what: Finished, err: &NodeError{Node: &r.graph.nodes[i], Err: errors.New("it ended without a result")}}
 	defer func() { r.tell(m) }()
 	report := func(done float64) {
@@ -232,7 +232,6 @@ func (r *run) work(ctx context.Context, i, workers int) {
 		default: // the loop is busy: the next report will do
 		}
 	}
-	verify := r.steps[i].state == Reused
 	m.record, m.output, m.err = r.compute(ctx, i, workers, r.output, report)
 	if verify && m.err == nil && cache.DigestOf(m.output) == r.steps[i].digest {
 		if _, err := r.store.Output(r.steps[i].digest); err != nil {
