@@ -44,22 +44,6 @@ func BenchmarkPrepare(b *testing.B) {
 	}
 }
 
-func prepared(b *testing.B, task *estimate.Task) (*backwardFit, bestFit) {
-	f, err := newFit(task)
-	if err != nil {
-		b.Fatal(err)
-	}
-	m, err := newBackward(f)
-	if err != nil {
-		b.Fatal(err)
-	}
-	best, err := m.prepare()
-	if err != nil {
-		b.Fatal(err)
-	}
-	return m, best
-}
-
 // BenchmarkLikelihood is one likelihood of backward.
 func BenchmarkLikelihood(b *testing.B) {
 	m, best := prepared(b, benchmarked(b))

@@ -151,3 +151,20 @@ func backwardOn(t testing.TB, task *estimate.Task, gas *Gas, s *Spectra) *backwa
 	}
 	return b
 }
+
+// prepared is the fit of backward to a task's reductions, before it is drawn.
+func prepared(t testing.TB, task *estimate.Task) (*backwardFit, bestFit) {
+	f, err := newFit(task)
+	if err != nil {
+		t.Fatal(err)
+	}
+	m, err := newBackward(f)
+	if err != nil {
+		t.Fatal(err)
+	}
+	best, err := m.prepare()
+	if err != nil {
+		t.Fatal(err)
+	}
+	return m, best
+}
