@@ -26,5 +26,5 @@ var Probe = estimate.Probe{
 	Doc:        "Weighs an object by the shapes and places of the galaxies behind it.",
 	Blocks:     blocks,
 	Reductions: []estimate.Reduction{profileReduction},
-	Methods:    []estimate.Method{tangentialShear, einsteinRadiusMethod, combined},
+	Methods:    []estimate.Method{tangentialShear, aperture, einsteinRadiusMethod, combined},
 }

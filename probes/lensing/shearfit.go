@@ -24,27 +24,47 @@ type shearPart struct {
 
 // addShear adds the shear profile that the task's reduction made.
 func (f *lensFit) addShear() error {
+	p, err := f.readShear()
+	if err != nil {
+		return err
+	}
+	if p, err = within(p, f.task); err != nil {
+		return f.task.Errorf("%w", err)
+	}
+	s, err := f.newShear(p)
+	if err != nil {
+		return err
+	}
+	f.parts = append(f.parts, s)
+	return nil
+}
+
+// readShear decodes the profile that the task's reduction made.
+func (f *lensFit) readShear() (*Profile, error) {
+	p := new(Profile)
+	if err := p.UnmarshalBinary(f.task.Reduced["profile"]); err != nil {
+		return nil, f.task.Errorf("%w", err)
+	}
+	return p, nil
+}
+
+// newShear prepares the bins of a profile, and the assumptions that belong to
+// shear.
+func (f *lensFit) newShear(p *Profile) (*shearPart, error) {
 	t := f.task
 	terms := t.Settings["covariance"].List
 	if !slices.Contains(terms, "shape") {
-		return t.Errorf("covariance: say which sources of error count, as covariance = [\"shape\"]; without `shape` there is no fit")
+		return nil, t.Errorf("covariance: say which sources of error count, as covariance = [\"shape\"]; without `shape` there is no fit")
 	}
-	p := new(Profile)
-	if err := p.UnmarshalBinary(t.Reduced["profile"]); err != nil {
-		return t.Errorf("%w", err)
-	}
-	s := &shearPart{task: t, halo: f.halo, critical: t.Cosmology.SigmaCritical(t.Object.Redshift, math.Inf(1))}
-	var err error
-	if s.profile, err = within(p, t); err != nil {
-		return t.Errorf("%w", err)
-	}
+	s := &shearPart{task: t, halo: f.halo, profile: p, critical: t.Cosmology.SigmaCritical(t.Object.Redshift, math.Inf(1))}
 	var added []float64
+	var err error
 	if slices.Contains(terms, "structure") {
-		if added, s.structureTo, err = structure(t, s.profile.Bins); err != nil {
-			return t.Errorf("%w", err)
+		if added, s.structureTo, err = structure(t, p.Bins); err != nil {
+			return nil, t.Errorf("%w", err)
 		}
 	}
-	s.measure = newMeasure(s.profile, added)
+	s.measure = newMeasure(p, added)
 	if slices.Contains(terms, "halo") {
 		v := newVariety(f)
 		s.variety = &v
@@ -52,10 +72,9 @@ func (f *lensFit) addShear() error {
 	s.bias = f.parameters.Assume(t.Settings, "shear_bias")
 	s.dilution = f.parameters.Assume(t.Settings, "dilution")
 	if s.offset, err = newOffset(t, &f.parameters); err != nil {
-		return err
+		return nil, err
 	}
-	f.parts = append(f.parts, s)
-	return nil
+	return s, nil
 }
 
 // within returns the part of the profile that `fit_within` asks for.
