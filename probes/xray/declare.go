@@ -15,7 +15,7 @@ var Probe = estimate.Probe{
 		{Name: "density", Version: 1, From: []string{"density"}, Run: reduceDensity},
 		{Name: "temperature", Version: 1, From: []string{"temperature"}, Run: reduceTemperature},
 	},
-	Methods: []estimate.Method{backward, forward},
+	Methods: []estimate.Method{backward, forward, isothermalBetaMethod},
 }
 
 // gasCautions hold for every hydrostatic method.

@@ -41,14 +41,15 @@ type forwardFit struct {
 	form *temperatureFit
 }
 
-func newForward(f *fit) (*forwardFit, error) {
+// newForward prepares the fit of a version of the temperature's form, "by-bins"
+// for the one that the number of bins can bear.
+func newForward(f *fit, version string) (*forwardFit, error) {
 	n := f.spectra.Len()
-	if n < 3 {
+	if n < 3 && version != isothermal {
 		return nil, f.task.Errorf("%d temperature bin(s); a temperature profile needs at least 3 for the method forward", n)
 	}
 	w := &forwardFit{fit: f}
 	f.air = newAtmosphere(f.gas, f.spectra, nodesPerEfold)
-	version := f.task.Settings["temperature_form"].Text
 	if version == "by-bins" {
 		version = versionFor(n)
 	}
@@ -81,7 +82,14 @@ func runForward(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
 	if err != nil {
 		return nil, err
 	}
-	w, err := newForward(f)
+	return f.fromSlopes(ctx, t.Settings["temperature_form"].Text)
+}
+
+// fromSlopes fits a version of the temperature's form and takes the mass from
+// the slopes.
+func (f *fit) fromSlopes(ctx context.Context, version string) (*infer.Draws, error) {
+	t := f.task
+	w, err := newForward(f, version)
 	if err != nil {
 		return nil, err
 	}

@@ -25,7 +25,7 @@ func forwardOn(t testing.TB, gas *Gas, s *Spectra, settings method.Settings) *fo
 		task.Settings[name] = v
 	}
 	fillDefaults(forward.Settings, task.Settings)
-	w, err := newForward(&fit{task: task, gas: gas, spectra: s})
+	w, err := newForward(&fit{task: task, gas: gas, spectra: s}, task.Settings["temperature_form"].Text)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -150,7 +150,7 @@ func TestForwardLimits(t *testing.T) {
 	}
 	task := observed(t, &mock.SpectraData{})
 	fillDefaults(forward.Settings, task.Settings)
-	if _, err := newForward(&fit{task: task, gas: gasOf(coolCore), spectra: annuli(0, 100, 300)}); err == nil || !strings.Contains(err.Error(), "at least 3") {
+	if _, err := newForward(&fit{task: task, gas: gasOf(coolCore), spectra: annuli(0, 100, 300)}, "by-bins"); err == nil || !strings.Contains(err.Error(), "at least 3") {
 		t.Errorf("two bins: %v", err)
 	}
 	s := annuli(edgesBetween(40, 900, 6, false)...)

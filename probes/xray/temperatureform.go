@@ -39,9 +39,10 @@ func (t *temperature) slope(ln float64) float64 {
 	return s
 }
 
-// The versions of the form: short has three parameters, cool-core two more and
-// full another two.
+// The versions of the form: isothermal has one parameter, short three,
+// cool-core five and full seven.
 const (
+	isothermal   = "isothermal"
 	shortForm    = "short"
 	coolCoreForm = "cool-core"
 	fullForm     = "full"
@@ -70,14 +71,8 @@ type temperatureFit struct {
 // newTemperatureFit adds the parameters of a version, with wide priors about
 // what the bins suggest (common practice, no source).
 func newTemperatureFit(p *estimate.Parameters, version string, s *Spectra) (*temperatureFit, error) {
-	hottest, last := 0.0, s.Outer[s.Len()-1]
-	for _, kT := range s.Value {
-		hottest = math.Max(hottest, kT)
-	}
-	f := &temperatureFit{
-		words: "kT = T0 (1 + (r/rt)²)^(-c/2), a short form without a cool core",
-		base:  temperature{b: 2, Tmin: 1, rcool: 1, acool: 1},
-	}
+	last := s.Outer[s.Len()-1]
+	f := &temperatureFit{words: "one kT = T0 at all radii", base: temperature{rt: 1, b: 2, Tmin: 1, rcool: 1, acool: 1}}
 	var faults []error
 	add := func(name, unit string, place func(*temperature) *float64, pr prior.Prior, err error) {
 		faults = append(faults, err)
@@ -88,7 +83,12 @@ func newTemperatureFit(p *estimate.Parameters, version string, s *Spectra) (*tem
 		pr, err := prior.LogNormal(median, sd)
 		add(name, unit, place, pr, err)
 	}
-	lognormal("T0", "keV", func(t *temperature) *float64 { return &t.T0 }, hottest, 0.5)
+	pr, err := prior.LogUniform(leastTemperature, 2*mostTemperature)
+	add("T0", "keV", func(t *temperature) *float64 { return &t.T0 }, pr, err)
+	if version == isothermal {
+		return f, errors.Join(faults...)
+	}
+	f.words = "kT = T0 (1 + (r/rt)²)^(-c/2), a short form without a cool core"
 	lognormal("rt", "kpc", func(t *temperature) *float64 { return &t.rt }, 0.5*last, 1)
 	lognormal("c", "", func(t *temperature) *float64 { return &t.c }, 0.9, 0.6)
 	if version != shortForm {
