@@ -192,13 +192,7 @@ func (a *aperturePart) state(best lens, fit *estimate.Fit) {
 }
 
 // criticalOfMean is Σ_cr of the bins' mean efficiency.
-func (a *aperturePart) criticalOfMean() float64 {
-	beta := 0.0
-	for _, b := range a.profile.Bins {
-		beta += b.Beta / float64(len(a.profile.Bins))
-	}
-	return a.critical / beta
-}
+func (a *aperturePart) criticalOfMean() float64 { return a.critical / meanBeta(a.profile.Bins) }
 
 // controlConvergence is the halo's mean convergence in the control annulus.
 func (a *aperturePart) controlConvergence(l lens) float64 {
@@ -226,7 +220,9 @@ func (a *aperturePart) zeta(control float64, best lens) float64 {
 				kappa = outside + half + control - gamma[i]
 			}
 			outside += 2 * half
-			gamma[i] = b.Shear / response * (1 - kappa*b.Beta2/(b.Beta*b.Beta))
+			if b.Beta > 0 {
+				gamma[i] = b.Shear / response * (1 - kappa*b.Beta2/(b.Beta*b.Beta))
+			}
 		}
 	}
 	return a.sum(gamma)

@@ -42,6 +42,16 @@ type Node struct{ Radius, Share float64 }
 // Error is the mean of the two errors.
 func (b Bin) Error() float64 { return (b.Minus + b.Plus) / 2 }
 
+// meanBeta is ⟨β⟩ over the bins, weighted by their errors.
+func meanBeta(bins []Bin) float64 {
+	beta, weight := 0.0, 0.0
+	for _, b := range bins {
+		w := 1 / (b.Error() * b.Error())
+		beta, weight = beta+w*b.Beta, weight+w
+	}
+	return beta / weight
+}
+
 const profileFormat = "steelyard/lensing/profile/2\n"
 
 // MarshalBinary encodes the profile: equal profiles give equal bytes.

@@ -157,12 +157,7 @@ func (s *shearPart) assumes() []string {
 	} else {
 		lines = append(lines, assumed(s.task, miscentringSetting)...)
 	}
-	beta, weight := 0.0, 0.0
-	for _, b := range s.profile.Bins {
-		w := 1 / (b.Error() * b.Error())
-		beta, weight = beta+w*b.Beta, weight+w
-	}
-	lines = append(lines, fmt.Sprintf("sources: ⟨β⟩ = %.3f of a source at infinity", beta/weight))
+	lines = append(lines, fmt.Sprintf("sources: ⟨β⟩ = %.3f of a source at infinity", meanBeta(s.profile.Bins)))
 	if s.profile.Bins[0].Inner == s.profile.Bins[0].Outer {
 		lines = append(lines, "shear: taken at the quoted radii, which stand for bins of no width")
 	}

@@ -43,16 +43,12 @@ var (
 // structure is the covariance that matter along the line of sight adds to the
 // bins. The sources stand at one redshift, that of their mean efficiency.
 func structure(t *estimate.Task, bins []Bin) (covariance []float64, redshift float64, err error) {
-	beta, weight := 0.0, 0.0
-	for _, b := range bins {
-		w := 1 / (b.Error() * b.Error())
-		beta, weight = beta+w*b.Beta, weight+w
-	}
+	beta := meanBeta(bins)
 	e := newEfficiencies(t.Cosmology, t.Object.Redshift, 0)
 	lo, hi := t.Object.Redshift, 20.0
 	for hi-lo > 1e-6 {
 		middle := (lo + hi) / 2
-		if e.exact(middle) < beta/weight {
+		if e.exact(middle) < beta {
 			lo = middle
 		} else {
 			hi = middle
