@@ -34,7 +34,7 @@ func TestWhatFailsSaysWhere(t *testing.T) {
 	s := openStore(t, dir)
 	nodes := []Node{
 		work("error", nil, func(context.Context, Job) ([]byte, error) { return nil, errors.New("the prior excludes the data") }),
-		work("panic", nil, func(context.Context, Job) ([]byte, error) { var m map[string]int; m["x"] = 1; return nil, nil }),
+		work("panic", nil, func(context.Context, Job) ([]byte, error) { panic("a bug") }),
 		work("exit", nil, func(context.Context, Job) ([]byte, error) { runtime.Goexit(); return nil, nil }),
 		work("input", nil, func(_ context.Context, job Job) ([]byte, error) { return job.Input("panic") }),
 		work("file", nil, func(_ context.Context, job Job) ([]byte, error) { _, err := job.File("x.csv"); return nil, err }),
@@ -49,7 +49,7 @@ func TestWhatFailsSaysWhere(t *testing.T) {
 		r := mustRun(t, mustGraph(t, nodes...), s, Options{Workers: 2})
 		for id, want := range map[string]string{
 			"error":   "recipe.hcl:7: error: the prior excludes the data",
-			"panic":   "recipe.hcl:7: panic: it stopped on an internal error: assignment to entry in nil map",
+			"panic":   "recipe.hcl:7: panic: it stopped on an internal error: a bug",
 			"exit":    "recipe.hcl:7: exit: it ended without a result",
 			"input":   `recipe.hcl:7: input: node "panic" is not among the inputs of "input"`,
 			"file":    `recipe.hcl:7: file: x.csv is not among the files of "file"`,
