@@ -12,16 +12,16 @@ import (
 //
 // With p = n_e kT (the electrons' share of the pressure; the share cancels),
 //
-//	dp/dr = −μ (1 − f) n_e M(<r) / (H r²),   H = 1 keV kpc/(G m_p),
+//	dp/dr = −μ n_e M(<r) / (H r²),   H = 1 keV kpc/(G m_p),
 //
-// f being the constant share of the pressure that is not thermal. W(r) is the
-// weight of the gas above r, −dp/dr integrated from r to infinity. At r_e, the
-// outer edge of the temperature data, the pressure is free: p(r_e) = η W(r_e).
-// Inside, p(r) = p(r_e) + W(r) − W(r_e). Outside no data say what holds the gas
-// up, and its temperature enters only through the line of sight; there the
-// thermal pressure is taken to be the same share η of the weight,
-// p(r) = η W(r), which joins on smoothly and is exact where equilibrium holds
-// to infinity (η = 1).
+// for the whole pressure p = n_e kT/(1 − f), f being the share that is not
+// thermal. W(r) is the weight of the gas above r, −dp/dr integrated from r to
+// infinity. At r_e, the outer edge of the temperature data, the pressure is
+// free: p(r_e) = η W(r_e). Inside, p(r) = p(r_e) + W(r) − W(r_e). Outside no
+// data say what holds the gas up, and its temperature enters only through the
+// line of sight; there the pressure is taken to be the same share η of the
+// weight, p(r) = η W(r), which joins on and is exact where equilibrium holds to
+// infinity (η = 1).
 type atmosphere struct {
 	grid *radial
 	// modes is what the directions of the density's errors add to ln of the
@@ -83,9 +83,10 @@ func sparse(w []float64) seen {
 // state is the scratch space of one goroutine, and what a call leaves behind.
 type state struct {
 	mass     []float64 // M(<r) at the nodes, Msun: set by the caller
+	thermal  []float64 // 1 − f at the nodes: set by the caller
 	ratio    []float64 // n_e over the reference
 	weight   []float64 // W at the nodes, keV cm⁻³
-	pressure []float64 // p = n_e kT at the nodes, keV cm⁻³
+	pressure []float64 // n_e kT at the nodes, keV cm⁻³
 	kT       []float64 // keV at the nodes
 	hot      []float64 // emission × T^(1/4)
 	cold     []float64 // emission × T^(−3/4)
@@ -95,21 +96,21 @@ type state struct {
 
 func (a *atmosphere) newState() *state {
 	n := len(a.grid.r)
-	rows := make([]float64, 8*n)
+	rows := make([]float64, 9*n)
 	row := func(i int) []float64 { return rows[i*n : (i+1)*n : (i+1)*n] }
-	return &state{row(0), row(1), row(2), row(3), row(4), row(5), row(6), row(7), make([]float64, len(a.bins))}
+	return &state{row(0), row(1), row(2), row(3), row(4), row(5), row(6), row(7), row(8), make([]float64, len(a.bins))}
 }
 
-// solve sets the temperatures for the mass in s.mass, strength = μ(1 − f), the
-// outer pressure η and the density's moves z. It reports false when no
-// temperature is positive and finite.
-func (a *atmosphere) solve(s *state, strength, eta float64, z []float64) bool {
+// solve sets the temperatures for the mass and the thermal share in s, the mean
+// molecular weight, the outer pressure η and the density's moves z. It reports
+// false when no temperature is positive and finite.
+func (a *atmosphere) solve(s *state, molecule, eta float64, z []float64) bool {
 	a.move(s, z)
 	n := len(s.ratio)
 	for j, ratio := range s.ratio {
 		s.quotient[j] = ratio * s.mass[j] / a.grid.r[j]
 	}
-	strength /= constants.HydrostaticMass
+	strength := molecule / constants.HydrostaticMass
 	last := n - 1
 	above := a.beyond(s)
 	if !(above > 0) {
@@ -127,9 +128,9 @@ func (a *atmosphere) solve(s *state, strength, eta float64, z []float64) bool {
 	missing := (eta - 1) * s.weight[a.grid.edge]
 	for j, w := range s.weight {
 		if j < a.grid.edge {
-			s.pressure[j] = w + missing
+			s.pressure[j] = s.thermal[j] * (w + missing)
 		} else {
-			s.pressure[j] = eta * w
+			s.pressure[j] = s.thermal[j] * eta * w
 		}
 		s.kT[j] = s.pressure[j] / (s.ratio[j] * a.ref[j])
 		if !(s.kT[j] > 0) || math.IsInf(s.kT[j], 1) {

@@ -13,7 +13,7 @@ import (
 
 func (a *atmosphere) fill(s *state, m interface{ Mass(r float64) float64 }) {
 	for j, r := range a.grid.r {
-		s.mass[j] = m.Mass(r)
+		s.mass[j], s.thermal[j] = m.Mass(r), 1
 	}
 }
 
@@ -31,7 +31,10 @@ func TestAtmosphereAgainstBruteForce(t *testing.T) {
 		a := newAtmosphere(gasOf(coolCore), s, nodesPerEfold)
 		st := a.newState()
 		a.fill(st, h)
-		if !a.solve(st, 0.6*0.9, c.share, nil) {
+		for j := range st.thermal {
+			st.thermal[j] = 0.9
+		}
+		if !a.solve(st, 0.6, c.share, nil) {
 			t.Fatal("no atmosphere")
 		}
 		m := truth.Atmosphere(mock.Gas{Electrons: coolCore.Electrons, Nonthermal: 0.1, Edge: 1400, Share: c.share})

@@ -2,6 +2,7 @@ package xray
 
 import (
 	"context"
+	"fmt"
 	"math"
 
 	"steelyard/probes/estimate"
@@ -57,6 +58,7 @@ type backwardFit struct {
 	mass  estimate.Ref
 	outer estimate.Ref
 	halo  func(theta []float64) halo.Model
+	shape []string // the settings that give the halo its shape
 	// concentration at theta, nil where the model has none or it is drawn itself
 	concentration func(theta []float64) float64
 }
@@ -72,18 +74,19 @@ func newBackward(f *fit) (*backwardFit, error) {
 		return nil, err
 	}
 	b.outer = f.parameters.Assume(f.task.Settings, "outer_pressure_ratio")
-	f.assume()
+	if err := f.assume(); err != nil {
+		return nil, err
+	}
 	f.predict = func(s *state, theta []float64) bool {
-		strength, ok := f.strength(theta)
 		eta := b.outer.Of(theta)
-		if !ok || !(eta > 0) {
+		if !f.sane(theta) || !(eta > 0) {
 			return false
 		}
 		h := b.halo(theta)
 		for j, r := range f.air.grid.r {
 			s.mass[j] = h.Mass(r)
 		}
-		return f.air.solve(s, strength, eta, f.drawn(theta))
+		return f.support.fill(s.thermal, theta, h, f.air.grid.r) && f.air.solve(s, f.molecule.Of(theta), eta, f.drawn(theta))
 	}
 	return b, nil
 }
@@ -151,7 +154,7 @@ func (b *backwardFit) finish(sample *infer.Sample, quoted, best bestFit) (*infer
 			b.predict(s, theta)
 			return s.pressure[b.air.grid.edge]
 		}}},
-		Assumes: append([]string{"gas in hydrostatic equilibrium in a spherical mass: " + b.task.Settings["halo"].Text}, b.assumes()...),
+		Assumes: append(b.model(), b.assumes()...),
 		Checks:  []infer.Check{quoted.check()}, Warnings: b.warnings(quoted),
 	}
 	if b.concentration != nil {
@@ -163,4 +166,12 @@ func (b *backwardFit) finish(sample *infer.Sample, quoted, best bestFit) (*infer
 	}
 	b.addGas(d, sample)
 	return d, nil
+}
+
+// model says in words what the gas is held by.
+func (b *backwardFit) model() []string {
+	lines := []string{"gas in hydrostatic equilibrium in a spherical halo: " + b.task.Settings["halo"].Text}
+	lines = append(lines, b.stated(b.shape...)...)
+	lines = append(lines, fmt.Sprintf("thermal pressure free at %.4g kpc, where the temperatures end: η of the weight of the gas beyond", b.covers()[1]))
+	return append(lines, b.stated("outer_pressure_ratio")...)
 }

@@ -37,10 +37,7 @@ var gasAssumptions = []method.Setting{
 		Doc:     "fractional scatter of spectral temperatures about the model beyond their quoted errors, added in quadrature; 0 switches it off",
 		Source:  "common practice, no source",
 	},
-	{
-		Name: "nonthermal_fraction", Kind: method.Number, Low: 0, High: 0.95, Default: method.Exactly(0),
-		Doc: "constant share f = P_nt/(P_th + P_nt) of the pressure that is not thermal: M = M_th/(1 − f)",
-	},
+	nonthermalSettings[0], nonthermalSettings[1], nonthermalSettings[2],
 	{
 		Name: "mean_molecular_weight", Kind: method.Number, Low: 0.5, High: 1.3, Default: method.Exactly(0.6),
 		Doc: "μ of the gas, in proton masses: 0.595 to 0.61 for a third of solar metals, by the abundance table",

@@ -25,7 +25,7 @@ type fit struct {
 	fitted     int // the first of the parameters, which the temperatures alone determine
 	moves      int // directions of the density's errors drawn with the rest
 	scale      estimate.Ref
-	nonthermal estimate.Ref
+	support    support
 	molecule   estimate.Ref
 	scatter    estimate.Ref
 	// predict sets the temperatures of the bins at theta; false where the model is
@@ -48,12 +48,14 @@ func newFit(t *estimate.Task) (*fit, error) {
 
 // assume adds the assumptions, the scatter of temperatures last, so that the
 // rest can be fitted without it.
-func (f *fit) assume() {
+func (f *fit) assume() error {
 	f.fitted = len(f.parameters.Free)
 	f.scale = f.parameters.Assume(f.task.Settings, "temperature_scale")
-	f.nonthermal = f.parameters.Assume(f.task.Settings, "nonthermal_fraction")
+	var err error
+	f.support, err = f.newSupport()
 	f.molecule = f.parameters.Assume(f.task.Settings, "mean_molecular_weight")
 	f.scatter = f.parameters.Assume(f.task.Settings, "temperature_scatter")
+	return err
 }
 
 // drawn are the density's moves at theta.
@@ -62,11 +64,10 @@ func (f *fit) drawn(theta []float64) []float64 {
 	return theta[first : first+f.moves]
 }
 
-// strength is μ(1 − f) at theta, what the pull of the mass is multiplied by;
-// false where an assumption has no meaning.
-func (f *fit) strength(theta []float64) (float64, bool) {
-	share, mu := f.nonthermal.Of(theta), f.molecule.Of(theta)
-	return mu * (1 - share), share < 1 && mu > 0 && f.scale.Of(theta) > 0
+// sane reports whether the assumptions at theta have a meaning.
+func (f *fit) sane(theta []float64) bool {
+	share, _ := f.support.thermal(theta, 1)
+	return share > 0 && f.molecule.Of(theta) > 0 && f.scale.Of(theta) > 0
 }
 
 // problem is the posterior: the parameters, and a unit normal for every drawn

@@ -57,9 +57,11 @@ func newForward(f *fit, version string) (*forwardFit, error) {
 	if w.form, err = newTemperatureFit(&f.parameters, version, f.spectra); err != nil {
 		return nil, f.task.Errorf("%w", err)
 	}
-	f.assume()
+	if err := f.assume(); err != nil {
+		return nil, err
+	}
 	f.predict = func(s *state, theta []float64) bool {
-		if _, ok := f.strength(theta); !ok {
+		if !f.sane(theta) {
 			return false
 		}
 		t := w.form.at(theta)
@@ -216,25 +218,63 @@ func (w *forwardFit) newSlopes() *slopes {
 	return &slopes{w, table(lnInside), table(lnGrid)}
 }
 
-// mass is the mass in Msun at entry i of the table; not positive where the
-// pressure rises outwards.
-func (m *slopes) mass(theta []float64, t *temperature, at *slopeTable, i int) float64 {
-	slope := at.base[i] + t.slope(at.ln[i])
+// mass is the mass in Msun at entry i of the table, for gas all of whose
+// pressure is thermal but for the share that support gives at r/r200m; not
+// positive where the pressure rises outwards.
+func (m *slopes) mass(theta []float64, t *temperature, at *slopeTable, i int, r200m float64) float64 {
+	r := math.Exp(at.ln[i])
+	thermal, bend := m.support.thermal(theta, r/r200m)
+	// The whole pressure is n_e kT/(1 − f).
+	slope := at.base[i] + t.slope(at.ln[i]) - bend
 	for k, z := range theta[len(m.parameters.Free):] {
 		slope += z * at.moves[k][i]
 	}
-	strength, _ := m.strength(theta)
-	return -constants.HydrostaticMass / strength * t.kT(at.ln[i]) * math.Exp(at.ln[i]) * slope
+	return -constants.HydrostaticMass / (m.molecule.Of(theta) * thermal) * t.kT(at.ln[i]) * r * slope
+}
+
+// radius200m is r_200m of the draw, which the radial share of the pressure
+// needs: found from the mass that the share itself gives, by going round until
+// it settles. 1 where the share is constant; not positive where it has none.
+func (m *slopes) radius200m(theta []float64, t *temperature) float64 {
+	if !m.support.radial {
+		return 1
+	}
+	r := 1000.0
+	for range 30 {
+		last := r
+		// The outermost radius inside which the mean density is high enough.
+		inside := -1
+		var excess [2]float64
+		for i := len(m.grid.ln) - 1; i >= 0; i-- {
+			volume := 4 * math.Pi / 3 * math.Exp(3*m.grid.ln[i]) * m.support.threshold
+			e := math.Log(m.mass(theta, t, &m.grid, i, last) / volume)
+			if e >= 0 {
+				inside, excess[0] = i, e
+				break
+			}
+			excess[1] = e
+		}
+		if inside < 0 || inside == len(m.grid.ln)-1 || math.IsNaN(excess[1]) {
+			return 0
+		}
+		step := m.grid.ln[inside+1] - m.grid.ln[inside]
+		r = math.Exp(m.grid.ln[inside] + step*excess[0]/(excess[0]-excess[1]))
+		if math.Abs(r/last-1) < 1e-6 {
+			break
+		}
+	}
+	return r
 }
 
 // rises reports whether the mass is positive and rises at all radii inside the
 // data.
 func (m *slopes) rises(theta []float64) bool {
 	t := m.form.at(theta)
+	r200m := m.radius200m(theta, &t)
 	last := 0.0
 	for i := range m.inside.ln {
-		mass := m.mass(theta, &t, &m.inside, i)
-		if !(mass > last) {
+		mass := m.mass(theta, &t, &m.inside, i, r200m)
+		if !(mass > last && r200m > 0) {
 			return false
 		}
 		last = mass
@@ -247,10 +287,11 @@ func (m *slopes) rises(theta []float64) bool {
 // where it does not, it stays.
 func (m *slopes) lnMass(theta, radii, out []float64) error {
 	t := m.form.at(theta)
+	r200m := m.radius200m(theta, &t)
 	from, to := m.inside.ln[0], m.inside.ln[checks-1]
 	first, last := len(radii), -1
 	for i, ln := range m.grid.ln {
-		out[i] = math.Log(m.mass(theta, &t, &m.grid, i)) // NaN where negative
+		out[i] = math.Log(m.mass(theta, &t, &m.grid, i, r200m)) // NaN where negative
 		if ln >= from && ln <= to {
 			first, last = min(first, i), i
 		}

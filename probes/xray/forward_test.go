@@ -54,7 +54,7 @@ func TestHydrostaticMassReference(t *testing.T) {
 	m := &slopes{forwardFit: w}
 	for _, row := range ref.Profile {
 		at := slopeTable{ln: []float64{math.Log(row.R)}, base: []float64{gas.Form.slope(gas.Parameters, row.R)}}
-		near(t, fmt.Sprintf("mass within %g kpc", row.R), m.mass(theta, &form, &at, 0), row.Mass, 1e-10)
+		near(t, fmt.Sprintf("mass within %g kpc", row.R), m.mass(theta, &form, &at, 0, 1), row.Mass, 1e-10)
 	}
 }
 

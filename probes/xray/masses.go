@@ -26,11 +26,13 @@ func (b *backwardFit) chooseHalo() error {
 		return nil
 	case "cored-isothermal":
 		core := p.Assume(s, "core")
+		b.shape = []string{"core"}
 		b.halo = func(theta []float64) halo.Model {
 			return halo.NewCoredIsothermal(b.mass.Of(theta), core.Of(theta), threshold)
 		}
 		return nil
 	}
+	b.shape = []string{"concentration"}
 	c, err := p.Concentration(b.task)
 	if err != nil {
 		return err
@@ -45,6 +47,7 @@ func (b *backwardFit) chooseHalo() error {
 			return halo.NewNFW(m, c.Of(theta, m), threshold)
 		}
 	case "einasto":
+		b.shape = append(b.shape, "shape")
 		shape := p.Assume(s, "shape")
 		b.halo = func(theta []float64) halo.Model {
 			m := b.mass.Of(theta)

@@ -2,10 +2,10 @@ package xray
 
 import (
 	"fmt"
-	"strings"
 
+	"steelyard/probes/halo"
 	"steelyard/probes/infer"
-	"steelyard/probes/method"
+	"steelyard/probes/prior"
 )
 
 // poorFit is the p-value below which a fit is called poor.
@@ -23,24 +23,36 @@ func (f *fit) assumes() []string {
 	} else {
 		lines = append(lines, "temperatures taken as those of spherical shells (projected = false)")
 	}
-	return append(lines, f.stated(gasAssumptions)...)
+	if f.support.radial {
+		lines = append(lines, "pressure that is not thermal: the mean of simulated clusters with radius (Nelson, Lau & Nagai 2014)")
+	}
+	return append(lines, f.stated("temperature_scale", "temperature_scatter", f.support.setting(), "mean_molecular_weight",
+		"electron_molecular_weight", "clumping", "intrinsic_scatter")...)
 }
 
-// stated says in words what the settings are.
-func (f *fit) stated(settings []method.Setting) []string {
+// neutral holds the assumptions that need no mention at the value at which they
+// change nothing.
+var neutral = map[string]float64{"temperature_scale": 1, "clumping": 1}
+
+// stated says in words what the named settings are.
+func (f *fit) stated(names ...string) []string {
 	var lines []string
-	for _, s := range settings {
-		v := f.task.Settings[s.Name]
-		switch {
-		case !v.Set || s.Kind != method.Number:
+	for _, name := range names {
+		v := f.task.Settings[name]
+		if x, ok := neutral[name]; !v.Set || ok && v.Nuisance == "" && v.Prior == prior.Exact(x) {
 			continue
-		case v.Relation != "":
-			lines = append(lines, fmt.Sprintf("%s = relation(%q)", s.Name, v.Relation))
-		case v.Nuisance != "":
-			lines = append(lines, fmt.Sprintf("%s = nuisance.%s, %s", s.Name, v.Nuisance, v.Prior))
-		default:
-			lines = append(lines, strings.TrimSpace(fmt.Sprintf("%s = %s %s", s.Name, v.Prior, s.Unit)))
 		}
+		line := name + ": " + v.Prior.String()
+		if r, ok := halo.FindRelation(v.Relation); ok {
+			line = fmt.Sprintf("%s: relation %q (%s), scatter %.2g in ln", name, r.Name, r.Source, r.Scatter)
+		}
+		if v.Unit != "" {
+			line += " " + v.Unit
+		}
+		if v.Nuisance != "" {
+			line += fmt.Sprintf(" (nuisance.%s)", v.Nuisance)
+		}
+		lines = append(lines, line)
 	}
 	return lines
 }
