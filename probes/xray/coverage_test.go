@@ -46,7 +46,7 @@ func TestCoverage(t *testing.T) {
 		name         string
 		method       estimate.Method
 		densityError float64
-	}{{"backward", backward, 0.03}, {"backward, shells with errors of 15%", backward, 0.15}} {
+	}{{"backward", backward, 0.03}, {"backward, shells with errors of 15%", backward, 0.15}, {"forward", forward, 0.03}} {
 		t.Run(c.name, func(t *testing.T) { calibrate(t, c.method, c.densityError, mocks) })
 	}
 }
@@ -67,8 +67,10 @@ func calibrate(t *testing.T, m estimate.Method, densityError float64, mocks int)
 		last := s.TemperatureEdges[len(s.TemperatureEdges)-1] * kpc
 		gas := mock.Gas{Electrons: coolCore.Electrons, Edge: last, Share: draw(w["outer_pressure_ratio"])}
 		task := observed(t, object.Spectra(gas, s, rng))
-		for name, p := range w {
-			task.Settings[name] = method.Value{Set: true, Prior: p}
+		for _, setting := range m.Settings { // forward has no mass model
+			if p, ok := w[setting.Name]; ok {
+				task.Settings[setting.Name] = method.Value{Set: true, Prior: p}
+			}
 		}
 		task.Settings["intrinsic_scatter"] = method.Exactly(0)
 		task.Sampling = infer.Options{Draws: 1000, Stream: infer.NewStream("coverage", fmt.Sprint(i))}
@@ -123,7 +125,8 @@ func calibrate(t *testing.T, m estimate.Method, densityError float64, mocks int)
 	if got := float64(inside68) / n; math.Abs(got-0.68) > 3*math.Sqrt(0.68*0.32/n) {
 		t.Errorf("the 68%% interval holds the truth in %.1f%% of %d mocks", 100*got, mocks)
 	}
-	if math.Abs(bias) > typicalError/5 {
+	// For forward the bias is reported, not bounded: its forms are not the truth's.
+	if m.Name == backward.Name && math.Abs(bias) > typicalError/5 {
 		t.Errorf("ln M500 is biased by %+.4f, the typical error is %.3f", bias, typicalError)
 	}
 }
