@@ -261,6 +261,18 @@ func TestSpoiltDatabase(t *testing.T) {
 	}
 }
 
+// rounds is how often to repeat a random test: a quarter as often with -short,
+// many times over where STEELYARD_SLOW is set.
+func rounds(usual, slow int) int {
+	switch {
+	case os.Getenv("STEELYARD_SLOW") != "":
+		return slow
+	case testing.Short():
+		return max(1, usual/4)
+	}
+	return usual
+}
+
 // Whatever bytes of the database are changed, nothing wrong is ever read, and
 // the store can be mended.
 func TestRandomDamage(t *testing.T) {
@@ -269,12 +281,8 @@ func TestRandomDamage(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	rounds := 30
-	if os.Getenv("STEELYARD_SLOW") != "" {
-		rounds = 3000
-	}
 	r := rand.New(rand.NewPCG(3, 4))
-	for range rounds {
+	for range rounds(30, 3000) {
 		spoil(t, dir, func([]byte) []byte {
 			b := bytes.Clone(whole)
 			for range 1 + r.IntN(20) {
@@ -317,12 +325,8 @@ func TestDamagedPageStructure(t *testing.T) {
 			places = append(places, p+i)
 		}
 	}
-	rounds := 30
-	if os.Getenv("STEELYARD_SLOW") != "" {
-		rounds = 3000
-	}
 	r := rand.New(rand.NewPCG(5, 6))
-	for range rounds {
+	for range rounds(30, 3000) {
 		spoil(t, dir, func([]byte) []byte {
 			b := bytes.Clone(whole)
 			for range 1 + r.IntN(3) {

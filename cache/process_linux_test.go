@@ -65,10 +65,7 @@ func childFill(args []string) error {
 func TestKilledWhileStoring(t *testing.T) {
 	dir := t.TempDir()
 	r := rand.New(rand.NewPCG(7, 8))
-	kills := 40
-	if os.Getenv("STEELYARD_SLOW") != "" {
-		kills = 600
-	}
+	kills := rounds(40, 600)
 	next := 0
 	for range kills {
 		c := child("fill", dir, fmt.Sprint(next))

@@ -79,8 +79,11 @@ func mortal() *Graph {
 // the end the same digits come out as in an undisturbed run.
 func TestKilledAtAnyInstant(t *testing.T) {
 	kills := 60
-	if os.Getenv("STEELYARD_SLOW") != "" {
+	switch {
+	case os.Getenv("STEELYARD_SLOW") != "":
 		kills = 1000
+	case testing.Short():
+		kills = 15
 	}
 	whole := mustRun(t, mortal(), openStore(t, t.TempDir()), Options{Recipe: "mortal"})
 	r := rand.New(rand.NewPCG(9, 10))
