@@ -96,9 +96,6 @@ func (p *Plan) read(path string, d recipes.Data, want []catalogue.Want) (*catalo
 	if !names(condition, separationColumn) {
 		return catalogue.Read(path, want, &catalogue.Filter{Names: condition.Names(), Keep: condition.Keep}, catalogue.Limits{})
 	}
-	if !p.object.HasCentre {
-		return nil, fmt.Errorf("`select` asks for the separation from the centre, and the object has no `centre`; add centre = sky(…) to the object")
-	}
 	return p.readSeparated(path, want, condition, header)
 }
 
