@@ -35,6 +35,10 @@ var tangentialShear = estimate.Method{
 			"The mean over sources is of second order in κ: where g exceeds 0.3 it is low by several per cent; leave such bins out with fit_within.",
 			"With shape noise alone the error does not hold structure along the line of sight, which can add as much (Hoekstra 2003, MNRAS 339, 1155), nor the variety of haloes.",
 		},
+		Measured: "On 400 invented catalogues of 12000 galaxies, their haloes, calibrations and elongations drawn from the priors, the 68% interval of M_200c " +
+			"held the truth in 65.0 ± 2.4%, the 95% interval in 94.0 ± 1.1%, with a mean bias of ln M of −0.002 (typical error 0.24); " +
+			"at one halo of 8e14 Msun on the relation of Duffy et al. 2008 the bias over 200 was −0.009 (typical error 0.21). " +
+			"STEELYARD_SLOW=1 go test -v -run 'Coverage|BiasAtOneHalo' ./probes/lensing",
 	},
 	Uses: []string{"profile"},
 	Run: func(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
