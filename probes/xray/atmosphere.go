@@ -58,12 +58,19 @@ func newAtmosphere(gas *Gas, s *Spectra, density float64) *atmosphere {
 		a.ref = append(a.ref, reference(r))
 	}
 	a.gravity = g.steps(func(r float64) float64 { return reference(r) / r })
+	weight := g.shell
+	if s.Projected {
+		weight = g.annulus
+	}
+	var weights [][]float64
 	for i := range s.Value {
-		weight := g.shell
-		if s.Projected {
-			weight = g.annulus
-		}
-		a.bins = append(a.bins, sparse(weight(s.Inner[i], s.Outer[i], emission)))
+		weights = append(weights, weight(s.Inner[i], s.Outer[i], emission))
+	}
+	if s.Mixing != nil {
+		weights = mix(s.Mixing, weights)
+	}
+	for _, w := range weights {
+		a.bins = append(a.bins, sparse(w))
 	}
 	return a
 }

@@ -64,8 +64,23 @@ var temperatureBlock = method.Block{
 	Doc:          "Temperatures kT from spectra, one row a bin.",
 	Columns:      append(append([]method.Column{}, edges...), measured("keV", "temperature of the bin")...),
 	Alternatives: alternatives,
-	Settings: []method.Setting{{
-		Name: "projected", Kind: method.Flag, Default: method.Value{Set: true, Flag: true},
-		Doc: "true for spectra of annuli on the sky, which see all gas along the line of sight; false for deprojected shells",
+	Settings: []method.Setting{
+		{
+			Name: "projected", Kind: method.Flag, Default: method.Value{Set: true, Flag: true},
+			Doc: "true for spectra of annuli on the sky, which see all gas along the line of sight; false for deprojected shells",
+		},
+		{
+			Name: "psf_width", Kind: method.Exact, Unit: "kpc", Length: true, Low: 0, High: 1e5,
+			Doc: "width of the telescope's point-spread function; annuli narrower than this are told, unless `mixing` is given",
+		},
+	},
+	Blocks: []method.Block{{
+		Name: "mixing",
+		Doc:  "How the telescope spreads the light of the annuli: one row a pair, annuli numbered from 1 in the order of the temperature file; a pair left out shares nothing.",
+		Columns: []method.Column{
+			{Name: "from", Required: true, Doc: "annulus that the light comes from"},
+			{Name: "into", Required: true, Doc: "annulus whose spectrum it ends in"},
+			{Name: "share", Required: true, Doc: "share of the light of the first that ends in the second"},
+		},
 	}},
 }

@@ -13,7 +13,7 @@ var Probe = estimate.Probe{
 	Blocks: []method.Block{densityBlock, temperatureBlock},
 	Reductions: []estimate.Reduction{
 		{Name: "density", Version: 1, From: []string{"density"}, Run: reduceDensity},
-		{Name: "temperature", Version: 1, From: []string{"temperature"}, Run: reduceTemperature},
+		{Name: "temperature", Version: 2, From: []string{"temperature", "temperature.mixing?"}, Run: reduceTemperature},
 	},
 	Methods: []estimate.Method{backward, forward, isothermalBetaMethod},
 }
@@ -21,7 +21,7 @@ var Probe = estimate.Probe{
 // gasCautions hold for every hydrostatic method.
 var gasCautions = []string{
 	"below 3 keV the spectroscopic-like weight is not calibrated",
-	"spectra of the innermost annuli are smeared by the instrument where the annuli are narrower than its point-spread function; nothing corrects for it here",
+	"the telescope smears annuli that are narrower than its point-spread function into each other: give a mixing matrix, or state psf_width to be told",
 	"spherical symmetry and equilibrium are assumed: what a merger or a cool core in motion does is the intrinsic scatter's part",
 }
 

@@ -113,7 +113,7 @@ func (d *decoder) end() error {
 
 const (
 	gasFormat         = "steelyard/xray/density/1"
-	temperatureFormat = "steelyard/xray/temperature/1"
+	temperatureFormat = "steelyard/xray/temperature/2"
 )
 
 // MarshalBinary returns the canonical bytes of the gas.
@@ -171,6 +171,7 @@ func (s *Spectra) MarshalBinary() ([]byte, error) {
 	for _, v := range [][]float64{s.Inner, s.Outer, s.Value, s.Minus, s.Plus} {
 		e.numbers(v)
 	}
+	e.numbers(s.Mixing)
 	e.words(s.Notes)
 	return e.b, nil
 }
@@ -183,9 +184,15 @@ func (s *Spectra) UnmarshalBinary(b []byte) error {
 	}
 	*s = Spectra{Projected: d.bits() == 1}
 	s.Inner, s.Outer, s.Value, s.Minus, s.Plus = d.numbers(), d.numbers(), d.numbers(), d.numbers(), d.numbers()
+	if mixing := d.numbers(); len(mixing) > 0 {
+		s.Mixing = mixing
+	}
 	s.Notes = d.words()
 	if err := d.end(); err != nil {
 		return err
+	}
+	if n := len(s.Value); s.Mixing != nil && len(s.Mixing) != n*n {
+		return errDamaged
 	}
 	for _, v := range [][]float64{s.Inner, s.Outer, s.Minus, s.Plus} {
 		if len(v) != len(s.Value) {

@@ -3,6 +3,7 @@ package xray
 import (
 	"context"
 	"encoding"
+	"fmt"
 	"math"
 
 	"steelyard/probes/estimate"
@@ -15,6 +16,9 @@ import (
 type Spectra struct {
 	Bins
 	Projected bool
+	// Mixing is the share of the light of annulus j that reaches annulus i, at
+	// i·n + j; nil when the telescope is taken to be sharp.
+	Mixing []float64
 }
 
 // Plausible ranges, wide enough for any galaxy group or cluster; outside them
@@ -118,10 +122,44 @@ func reduceTemperature(_ context.Context, t *estimate.Task) (encoding.BinaryMars
 		}
 	}
 	s := &Spectra{Bins: *bins, Projected: true}
-	if v := t.Blocks["temperature"]["projected"]; v.Set {
+	block := t.Blocks["temperature"]
+	if v := block["projected"]; v.Set {
 		s.Projected = v.Flag
 	}
+	if spread := t.Tables["temperature.mixing"]; spread != nil {
+		if !s.Projected {
+			return nil, t.Errorf("the temperatures are those of shells (projected = false): a telescope mixes annuli, not shells; leave out the block mixing")
+		}
+		inner := t.Kpc(table.Column("inner"))
+		if inner == nil {
+			inner = t.Kpc(table.Column("radius"))
+		}
+		n := len(inner)
+		if s.Mixing, err = readMixing(t, spread, n, n > 1 && inner[0] > inner[n-1]); err != nil {
+			return nil, err
+		}
+	} else if v := block["psf_width"]; v.Set {
+		s.noteBlur(t, v)
+	}
 	return s, nil
+}
+
+// noteBlur says which annuli are narrower than the telescope's point-spread
+// function, whose width the block states.
+func (s *Spectra) noteBlur(t *estimate.Task, v method.Value) {
+	width := v.Prior.A
+	if v.Unit == "rad" {
+		width *= t.Cosmology.AngularDiameter(t.Object.Redshift)
+	}
+	narrow := 0
+	for i := range s.Value {
+		if s.Outer[i]-s.Inner[i] < width {
+			narrow++
+		}
+	}
+	if narrow > 0 {
+		s.Notes = append(s.Notes, fmt.Sprintf("%d of %d annuli are narrower than the point-spread function (%.4g kpc) and no mixing matrix is given: their temperatures are smeared into each other", narrow, s.Len(), width))
+	}
 }
 
 // coolest returns the lowest temperature.
