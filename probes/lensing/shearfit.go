@@ -52,7 +52,7 @@ func (f *lensFit) readShear() (*Profile, error) {
 // shear.
 func (f *lensFit) newShear(p *Profile) (*shearPart, error) {
 	t := f.task
-	terms := t.Settings["covariance"].List
+	terms := errorTerms(t, p)
 	if !slices.Contains(terms, "shape") {
 		return nil, t.Errorf("covariance: say which sources of error count, as covariance = [\"shape\"]; without `shape` there is no fit")
 	}

@@ -227,7 +227,7 @@ func TestRefusedFits(t *testing.T) {
 		spoil func(*estimate.Task)
 		says  string
 	}{
-		{"no covariance", func(k *estimate.Task) { delete(k.Settings, "covariance") }, `covariance = ["shape"]`},
+		{"no noise of shapes", func(k *estimate.Task) { k.Settings["covariance"] = method.Words("structure") }, `covariance = ["shape"]`},
 		{"nothing to fit", func(k *estimate.Task) {
 			k.Settings["mass"], k.Settings["concentration"] = method.Exactly(1e15), method.Exactly(4)
 		}, "nothing to fit"},

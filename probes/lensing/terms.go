@@ -14,8 +14,8 @@ import (
 // The settings that say which sources of error a fit of shear counts.
 var (
 	covarianceSetting = method.Setting{
-		Name: "covariance", Kind: method.Choices, Choices: []string{"shape", "structure", "halo"}, Required: true,
-		Doc: "which sources of error the fit counts, and it must be said. `shape`: the noise of the galaxies' own shapes, or the profile's errors or covariance. " +
+		Name: "covariance", Kind: method.Choices, Choices: []string{"shape", "structure", "halo"},
+		Doc: "which sources of error the fit counts: all three when silent, `shape` alone for a profile with a covariance of its own. `shape`: the noise of the galaxies' own shapes, or the profile's errors or covariance. " +
 			"`structure`: matter along the line of sight. `halo`: how haloes of one mass differ, as far as no drawn parameter stands for it",
 		Source: "Hoekstra 2003, MNRAS 339, 1155; Gruen et al. 2015, MNRAS 449, 4264",
 	}
@@ -39,6 +39,17 @@ var (
 	}
 	termSettings = []method.Setting{covarianceSetting, sigma8Setting, spectralIndexSetting, baryonSetting, orientationSetting}
 )
+
+// errorTerms lists the sources of error that a fit of the profile counts.
+func errorTerms(t *estimate.Task, p *Profile) []string {
+	if stated := t.Settings["covariance"].List; stated != nil {
+		return stated
+	}
+	if p.Covariance != nil {
+		return []string{"shape"}
+	}
+	return []string{"shape", "structure", "halo"}
+}
 
 // structure is the covariance that matter along the line of sight adds to the
 // bins. The sources stand at one redshift, that of their mean efficiency.

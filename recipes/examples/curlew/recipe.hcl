@@ -70,7 +70,6 @@ lensing "shapes" {
     method        = "tangential-shear"
     halo          = "nfw"
     concentration = lognormal(4.5, 0.3)
-    covariance    = ["shape"] # noise of the shapes alone
   }
 }
 
