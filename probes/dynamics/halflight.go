@@ -81,7 +81,7 @@ func runHalfLight(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
 		within[i] = 4. / 3 * radius.Of(theta)
 	}
 	covers := infer.Percentiles(within, 16, 50, 84)
-	return t.Finish(estimate.Fit{
+	return finish(t, obs.sample, estimate.Fit{
 		Sample: drawn, Parameters: &a.parameters, LnMass: a.lnMass,
 		Covers: [2]float64{covers[0], covers[2]},
 		Assumes: append(obs.assumes,

@@ -96,7 +96,7 @@ type phaseSpace struct {
 }
 
 func newPhaseSpace(s *sample, from, to float64) phaseSpace {
-	d := phaseSpace{from: from, to: to, cut: s.list.Method == "sigma-clip"}
+	d := phaseSpace{from: from, to: to, cut: s.list.Method == "sigma-clip" || s.list.Method == "caustic"}
 	widest, total := 0.0, 0.0
 	for _, g := range s.galaxies {
 		widest = max(widest, math.Abs(g.Velocity))
@@ -169,7 +169,7 @@ func runJeans(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
 		return nil, err
 	}
 	task, scatter := withScatter(t, 0.2, "")
-	return task.Finish(estimate.Fit{
+	return finish(task, s, estimate.Fit{
 		Sample: drawn, Parameters: &f.parameters, LnMass: f.model.lnMass, Derived: f.model.derived(),
 		Covers:   [2]float64{f.nearest(), f.data.to},
 		Assumes:  append(s.describe(), f.assumes(scatter)...),

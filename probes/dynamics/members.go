@@ -18,7 +18,9 @@ type Galaxy struct {
 	North    float64 `json:"north"`    // kpc
 	Radius   float64 `json:"radius"`   // kpc, projected
 	Velocity float64 `json:"velocity"` // km/s about the mean redshift, in the cluster's frame
-	Limit    float64 `json:"limit"`    // largest |v| that a member may have where it lies, by sigma-clip; else 0
+	Twice    bool    `json:"twice"`    // listed twice, and left out for it
+	Core     bool    `json:"core"`     // for caustic: kept by clipping, which sets the level of the caustics
+	Limit    float64 `json:"limit"`    // largest |v| that a member may have where it lies, by sigma-clip and caustic; else 0
 	Member   bool    `json:"member"`
 	Reason   string  `json:"reason"` // why it is a member or not
 }
@@ -29,8 +31,10 @@ type Members struct {
 	Schema    string   `json:"schema"`
 	File      string   `json:"file"`
 	Method    string   `json:"method"`
-	Redshift  float64  `json:"redshift"` // biweight mean of the members
-	Window    float64  `json:"window"`   // km/s about the object's redshift; 0 where all were given
+	CentreRA  float64  `json:"centre_ra"`  // rad
+	CentreDec float64  `json:"centre_dec"` // rad
+	Redshift  float64  `json:"redshift"`   // biweight mean of the members
+	Window    float64  `json:"window"`     // km/s about the object's redshift; 0 where all were given
 	HasErrors bool     `json:"has_errors"`
 	Weighted  bool     `json:"weighted"`
 	Galaxies  []Galaxy `json:"galaxies"` // in the order of the file

@@ -25,6 +25,7 @@ type observation struct {
 	assumes  []string
 	checks   []infer.Check
 	warnings []string
+	sample   *sample // nil for a quoted dispersion
 }
 
 // observe measures the dispersion of the members, or takes the quoted one.
@@ -65,7 +66,7 @@ func (s *sample) observe(ctx context.Context, t *estimate.Task, psi []float64) (
 		return nil, err
 	}
 	return &observation{
-		sigma: r.sigma, linear: r.linear, los: s.lineOfSight(), assumes: s.describe(),
+		sigma: r.sigma, linear: r.linear, los: s.lineOfSight(), assumes: s.describe(), sample: s,
 		checks: checks, warnings: append(s.remarks(r), warnings...),
 	}, nil
 }

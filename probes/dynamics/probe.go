@@ -25,7 +25,7 @@ var Probe = estimate.Probe{
 	Reductions: []estimate.Reduction{{
 		Name: "members", Version: 1, From: []string{"galaxies", "members?"}, Run: reduceMembers,
 	}},
-	Methods: []estimate.Method{dispersionScaling, virial, projectedMass, jeans, halfLight},
+	Methods: []estimate.Method{dispersionScaling, virial, projectedMass, jeans, caustic, halfLight},
 }
 
 var galaxiesBlock = method.Block{
@@ -37,7 +37,8 @@ var galaxiesBlock = method.Block{
 		{Name: "dec", Unit: "rad", Required: true, Doc: "declination, ICRS"},
 		{Name: "redshift", Required: true, Doc: "redshift, heliocentric or in the frame of the CMB alike: only differences about the mean are used"},
 		{Name: "error", Doc: "error of the redshift; without it taken as zero, and said"},
-		{Name: "weight", Doc: "weight of the galaxy in the virial radius, the inverse of the completeness where it lies"},
+		{Name: "weight", Doc: "weight of the galaxy among positions, the inverse of the completeness where it lies"},
+		{Name: "magnitude", Doc: "apparent magnitude, to find the brightest galaxy by"},
 	},
 }
 
@@ -46,10 +47,14 @@ var membersBlock = method.Block{
 	Doc:  "How members are told from the field. Without this block the shifting gapper does it.",
 	Settings: []method.Setting{
 		{
-			Name: "method", Kind: method.Choice, Choices: []string{"given", "sigma-clip", "shifting-gapper"}, Planned: []string{"caustic"},
+			Name: "method", Kind: method.Choice, Choices: []string{"given", "sigma-clip", "shifting-gapper", "caustic"},
 			Default: method.Word("shifting-gapper"),
-			Doc:     "given: the file holds members only; sigma-clip: within so many times the local dispersion; shifting-gapper: joined to the mean velocity without a gap, radius by radius",
-			Source:  "Mamon, Biviano & Murante 2010, A&A 520, A30; Fadda et al. 1996, ApJ 473, 670",
+			Doc:     "given: the file holds members only; sigma-clip: within so many times the local dispersion; shifting-gapper: joined to the mean velocity without a gap, radius by radius; caustic: slower than the escape speed that the diagram of radius and velocity shows",
+			Source:  "Mamon, Biviano & Murante 2010, A&A 520, A30; Fadda et al. 1996, ApJ 473, 670; Diaferio 1999, MNRAS 309, 610",
+		},
+		{
+			Name: "centre", Kind: method.Choice, Choices: []string{"given", "brightest", "densest"}, Default: method.Word("given"),
+			Doc: "given: the object's; brightest: the brightest galaxy within 2000 km/s of the object's redshift, by magnitude; densest: the one of these nearest to its tenth neighbour",
 		},
 		{
 			Name: "window", Kind: method.Exact, Unit: "km/s", Default: method.Exactly(5000), Low: 500, High: 30000,

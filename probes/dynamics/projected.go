@@ -105,7 +105,7 @@ func runProjected(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
 		return nil, err
 	}
 	task, scatter := withScatter(t, 0.2, "")
-	return task.Finish(estimate.Fit{
+	return finish(task, s, estimate.Fit{
 		Sample: drawn, Parameters: &a.parameters, LnMass: a.lnMass,
 		Covers: [2]float64{aperture, aperture},
 		Assumes: append(obs.assumes,

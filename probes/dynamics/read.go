@@ -17,15 +17,12 @@ import (
 const fewest = 8
 
 // readGalaxies checks the columns of a catalogue and places each galaxy
-// relative to the object's centre.
-func readGalaxies(t *estimate.Task, table *catalogue.Table) ([]Galaxy, error) {
-	if !t.Object.HasCentre {
-		return nil, t.Errorf("the object has no centre, so the galaxies have no distance from it: add `centre = sky(\"…\", \"…\")` to the object")
-	}
+// relative to the centre.
+func readGalaxies(t *estimate.Task, table *catalogue.Table, choice string) ([]Galaxy, centre, error) {
 	ra, dec, redshift := table.Values("ra"), table.Values("dec"), table.Values("redshift")
 	errors, weights := table.Values("error"), table.Values("weight")
 	if table.Len() < fewest {
-		return nil, t.Errorf("%s: %d galaxies are too few; a velocity dispersion needs at least %d", table.File, table.Len(), fewest)
+		return nil, centre{}, t.Errorf("%s: %d galaxies are too few; a velocity dispersion needs at least %d", table.File, table.Len(), fewest)
 	}
 	galaxies := make([]Galaxy, table.Len())
 	scale := t.Cosmology.AngularDiameter(t.Object.Redshift)
@@ -38,19 +35,32 @@ func readGalaxies(t *estimate.Task, table *catalogue.Table) ([]Galaxy, error) {
 		if weights != nil {
 			g.Weight = weights[i]
 		}
-		g.East, g.North = offset(t.Object.RA, t.Object.Dec, g.RA, g.Dec)
+	}
+	if err := checkGalaxies(t, table.File, galaxies); err != nil {
+		return nil, centre{}, err
+	}
+	c, err := findCentre(t, table, choice)
+	if err != nil {
+		return nil, c, err
+	}
+	near := false
+	for i := range galaxies {
+		g := &galaxies[i]
+		g.East, g.North = offset(c.ra, c.dec, g.RA, g.Dec)
+		// Galaxies 10 degrees off belong to another object.
+		near = near || math.Hypot(g.East, g.North) < 10*math.Pi/180
 		g.East, g.North = g.East*scale, g.North*scale
 		g.Radius = math.Hypot(g.East, g.North)
 	}
-	return galaxies, checkGalaxies(t, table.File, galaxies, scale)
+	if !near {
+		return nil, c, t.Errorf("%s: no galaxy lies within 10 deg of the object's centre; check the centre and the units of ra and dec", table.File)
+	}
+	return galaxies, c, nil
 }
 
 // checkGalaxies refuses what cannot be a catalogue of redshifts, all rows of
 // one mistake at once.
-func checkGalaxies(t *estimate.Task, file string, galaxies []Galaxy, scale float64) error {
-	// Galaxies 10 degrees off belong to another object.
-	const far = 10 * math.Pi / 180
-	near := false
+func checkGalaxies(t *estimate.Task, file string, galaxies []Galaxy) error {
 	for _, mistake := range []struct {
 		is   func(Galaxy) bool
 		text string
@@ -71,12 +81,6 @@ func checkGalaxies(t *estimate.Task, file string, galaxies []Galaxy, scale float
 		if len(rows) > 0 {
 			return t.Errorf("%s, %s: %s", file, rowList(rows), mistake.text)
 		}
-	}
-	for _, g := range galaxies {
-		near = near || g.Radius < far*scale
-	}
-	if !near {
-		return t.Errorf("%s: no galaxy lies within 10 deg of the object's centre; check the centre and the units of ra and dec", file)
 	}
 	return nil
 }
@@ -144,6 +148,7 @@ func markDuplicates(galaxies []Galaxy, within float64) int {
 			if h.Error < g.Error || (h.Error == g.Error && h.Row < g.Row) {
 				keep, drop = h, g
 			}
+			drop.Twice = true
 			drop.Reason = fmt.Sprintf("duplicate of row %d", keep.Row)
 			found++
 		}

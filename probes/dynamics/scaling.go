@@ -82,7 +82,7 @@ func runScaling(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
 	if mass[1] < rel.lowest {
 		obs.warnings = append(obs.warnings, fmt.Sprintf("%s was calibrated above %.2g Msun: the mass is an extrapolation", rel.name, rel.lowest))
 	}
-	return task.Finish(estimate.Fit{
+	return finish(task, obs.sample, estimate.Fit{
 		Sample: drawn, Parameters: &a.parameters, LnMass: a.lnMass,
 		Covers:   [2]float64{a.radius200(mass[0]), a.radius200(mass[2])},
 		Assumes:  append(obs.assumes, append(s.assumes(factors), scatter, a.concentrationLine(t))...),

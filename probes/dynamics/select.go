@@ -32,11 +32,13 @@ func (f *field) number(name string) float64 { return f.settings[name].Prior.A }
 // reduceMembers is the reduction `members`: the verdict on every galaxy.
 func reduceMembers(ctx context.Context, t *estimate.Task) (encoding.BinaryMarshaler, error) {
 	table := t.Tables["galaxies"]
-	galaxies, err := readGalaxies(t, table)
+	settings := memberSettings(t.Blocks["members"])
+	galaxies, c, err := readGalaxies(t, table, settings["centre"].Text)
 	if err != nil {
 		return nil, err
 	}
-	f := &field{task: t, file: table.File, galaxies: galaxies, settings: memberSettings(t.Blocks["members"])}
+	f := &field{task: t, file: table.File, galaxies: galaxies, settings: settings}
+	f.note("%s", c.note())
 	f.duplicates()
 	name, window := f.settings["method"].Text, 0.0
 	if name == "given" {
@@ -55,11 +57,25 @@ func reduceMembers(ctx context.Context, t *estimate.Task) (encoding.BinaryMarsha
 	for i := range m.Galaxies {
 		m.Galaxies[i].Velocity = velocity(m.Galaxies[i].Redshift, m.Redshift)
 	}
-	if dv := velocity(m.Redshift, t.Object.Redshift); math.Abs(dv) > 500 {
-		f.warn("the members' mean redshift %.5f lies %.0f km/s from the object's %.5f", m.Redshift, dv, t.Object.Redshift)
-	}
+	f.frame(m)
+	m.CentreRA, m.CentreDec = c.ra, c.dec
 	m.Notes, m.Warnings = f.notes, f.warnings
 	return m, nil
+}
+
+// frame warns when the members' mean redshift is not the object's.
+func (f *field) frame(m *Members) {
+	var v []float64
+	for _, g := range m.Galaxies {
+		if g.Member {
+			v = append(v, g.Velocity)
+		}
+	}
+	dv := velocity(m.Redshift, f.task.Object.Redshift)
+	if doubt := BiweightScale(v) / math.Sqrt(float64(len(v))); math.Abs(dv) > math.Max(300, 3*doubt) {
+		f.warn("the members' mean redshift %.5f lies %.0f km/s from the object's %.5f; is one of them heliocentric and the other in the frame of the CMB (up to 370 km/s apart)?",
+			m.Redshift, dv, f.task.Object.Redshift)
+	}
 }
 
 // memberSettings fills in the defaults of the block `members`, which a recipe
@@ -126,7 +142,8 @@ type candidate struct {
 	redshift float64 //
 	radius   float64 // kpc
 	velocity float64 // km/s about the current mean
-	limit    float64 // km/s, for sigma-clip
+	limit    float64 // km/s, for sigma-clip and caustic
+	core     bool    // for caustic
 	member   bool
 }
 
@@ -165,6 +182,8 @@ func (f *field) clean(name string, window float64) error {
 	switch name {
 	case "sigma-clip":
 		reasons, err = f.sigmaClip(group)
+	case "caustic":
+		reasons, err = f.causticMembers(group, window)
 	default:
 		reasons, err = f.shiftingGapper(group)
 	}
@@ -173,7 +192,7 @@ func (f *field) clean(name string, window float64) error {
 	}
 	for k, c := range group {
 		g := &f.galaxies[c.index]
-		g.Member, g.Reason, g.Limit = c.member, reasons[k], c.limit
+		g.Member, g.Reason, g.Limit, g.Core = c.member, reasons[k], c.limit, c.core
 	}
 	return nil
 }

@@ -324,6 +324,62 @@ func TestBadCatalogues(t *testing.T) {
 	}
 }
 
+// The centre is that of the object, the brightest galaxy, or the densest point.
+func TestCentre(t *testing.T) {
+	rows := clump(40, 0, 700, 600, 9)
+	for _, r := range clump(25, 200, 500, 60, 10) {
+		rows = append(rows, [3]float64{r[0] + 1200, r[1] - 500, r[2]})
+	}
+	table := galaxies(rows)
+	magnitude := make([]float64, len(rows))
+	for i := range magnitude {
+		magnitude[i] = 18 + float64(i%7)
+	}
+	magnitude[17] = 15
+	far := append([]float64(nil), rows[17][:]...)
+	table.Columns = append(table.Columns, catalogue.Column{Name: "magnitude", Values: magnitude})
+	for _, c := range []struct {
+		choice      string
+		east, north float64
+		within      float64
+	}{{"given", 0, 0, 1e-6}, {"brightest", far[0], far[1], 5}, {"densest", 1200, -500, 120}} {
+		task := weighing(t, invented, table, "given")
+		task.Blocks["members"]["centre"] = method.Word(c.choice)
+		if c.choice != "given" {
+			task.Object.HasCentre = false
+		}
+		m, err := reduced(t, task)
+		if err != nil {
+			t.Fatal(err)
+		}
+		east, north := offset(invented.RA, invented.Dec, m.CentreRA, m.CentreDec)
+		d := invented.AngularDiameter(invented.Redshift)
+		if off := math.Hypot(east*d-c.east, north*d-c.north); !(off <= c.within) {
+			t.Errorf("%s: the centre lies %.0f kpc from where it should be", c.choice, off)
+		}
+		if !warned(m.Notes, "centre: the") {
+			t.Errorf("%s: the choice is not said: %q", c.choice, m.Notes)
+		}
+	}
+	task := weighing(t, invented, galaxies(rows), "given")
+	task.Blocks["members"]["centre"] = method.Word("brightest")
+	if _, err := reduced(t, task); err == nil || !strings.Contains(err.Error(), "needs a column `magnitude`") {
+		t.Errorf("%v", err)
+	}
+}
+
+// Redshifts in another frame than the object's are noticed.
+func TestFrames(t *testing.T) {
+	rows := clump(100, 370, 700, 500, 9)
+	m, err := reduced(t, weighing(t, invented, galaxies(rows), "given"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if !warned(m.Warnings, "frame of the CMB") {
+		t.Errorf("warnings %q", m.Warnings)
+	}
+}
+
 // The list does not depend on the order of the file.
 func TestOrderOfRowsDoesNotMatter(t *testing.T) {
 	c := invented.Motions(mock.Motions{Members: 150, Field: 40, Radius: within(invented, 1.5)}, rand.New(rand.NewPCG(5, 6)))
@@ -360,7 +416,7 @@ func fieldOf5000(b *testing.B) *catalogue.Table {
 
 func BenchmarkReduce5000(b *testing.B) {
 	table := fieldOf5000(b)
-	for _, name := range []string{"given", "sigma-clip", "shifting-gapper"} {
+	for _, name := range []string{"given", "sigma-clip", "shifting-gapper", "caustic"} {
 		b.Run(name, func(b *testing.B) {
 			for b.Loop() {
 				task := weighing(b, invented, table, name)

@@ -40,7 +40,7 @@ func (f *field) clipped(group []candidate, clip float64) error {
 	return f.settle(group, func() error {
 		v := recentre(group)
 		sigma := scaleNamed("automatic", len(v)).of(sorted(v), nil)
-		rs := f.radius200(sigma) / clipConcentration
+		rs := coreRadius(f.task, sigma) / clipConcentration
 		mean, n := 0.0, 0.0
 		for k, c := range group {
 			local[k] = losTable().at(math.Log(c.radius / rs))
@@ -55,14 +55,6 @@ func (f *field) clipped(group []candidate, clip float64) error {
 		}
 		return nil
 	})
-}
-
-// radius200 is r_200 in kpc of a halo of dispersion sigma by the relation for
-// dark matter of Evrard et al. 2008.
-func (f *field) radius200(sigma float64) float64 {
-	z := f.task.Object.Redshift
-	m200 := evrard2008.mass(sigma, f.task.Cosmology.H(z)/100)
-	return math.Cbrt(m200 / (4 * math.Pi / 3 * 200 * f.task.Cosmology.CriticalDensity(z)))
 }
 
 func countMembers(group []candidate) int {

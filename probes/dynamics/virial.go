@@ -132,7 +132,7 @@ func runVirial(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
 		factors[i] = v.inside(a.halo(theta).Rs)
 	}
 	task, scatter := withScatter(t, 0.2, "")
-	return task.Finish(estimate.Fit{
+	return finish(task, s, estimate.Fit{
 		Sample: drawn, Parameters: &a.parameters, LnMass: a.lnMass,
 		Covers:   [2]float64{v.aperture, v.aperture},
 		Assumes:  append(obs.assumes, v.line(factors), scatter, a.concentrationLine(t)),
