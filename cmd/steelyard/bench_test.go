@@ -9,13 +9,13 @@ import (
 	"testing"
 )
 
-// asProgram makes the test binary behave as the program itself, so that a
-// benchmark can start a process of it.
+// asProgram makes the test binary behave as the program itself, so that tests
+// can start processes of it.
 const asProgram = "STEELYARD_TEST_AS_PROGRAM"
 
 func TestMain(m *testing.M) {
 	if os.Getenv(asProgram) != "" {
-		os.Exit(run(context.Background(), os.Args[1:], os.Stdout, os.Stderr))
+		main()
 	}
 	os.Exit(m.Run())
 }

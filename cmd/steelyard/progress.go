@@ -9,7 +9,9 @@ import (
 
 	"golang.org/x/term"
 
+	"steelyard/cache"
 	"steelyard/engine"
+	"steelyard/engine/history"
 )
 
 // display shows what a run is doing: one line that is written over on a
@@ -113,5 +115,18 @@ func (d *display) close() {
 	}
 	if len(parts) > 0 {
 		fmt.Fprintf(d.out, "nodes: %s\n", strings.Join(parts, ", "))
+	}
+}
+
+// recorded says under which number the weighing is in the history.
+func (d *display) recorded(entry cache.Weighing, fresh bool) {
+	switch {
+	case d.quiet:
+	case !fresh:
+		fmt.Fprintf(d.out, "nothing new since weighing %d of %s\n", entry.Number, history.Stamp(entry.Finished.In(time.Local)))
+	case entry.Number == 1:
+		fmt.Fprintf(d.out, "recorded as weighing 1\n")
+	default:
+		fmt.Fprintf(d.out, "recorded as weighing %d: steelyard since tells what changed\n", entry.Number)
 	}
 }

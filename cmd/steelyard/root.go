@@ -66,7 +66,7 @@ func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 		SilenceUsage: true, SilenceErrors: true, Version: version(),
 		CompletionOptions: cobra.CompletionOptions{HiddenDefaultCmd: true},
 	}
-	root.SetArgs(args)
+	root.SetArgs(append([]string{}, args...)) // nil would mean those of the process
 	root.SetOut(stdout)
 	root.SetErr(stderr)
 	flags := root.PersistentFlags()
@@ -75,7 +75,7 @@ func run(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 	flags.BoolVar(&o.json, "json", false, "print JSON, one object a line")
 	flags.BoolVar(&o.quiet, "quiet", false, "no progress")
 	root.SetFlagErrorFunc(func(_ *cobra.Command, err error) error { return &exit{exitWrong, err} })
-	root.AddCommand(weighCommand(o), inspectCommand(o), methodsCommand(o))
+	root.AddCommand(weighCommand(o), inspectCommand(o), traceCommand(o), sinceCommand(o), cacheCommand(o), methodsCommand(o))
 
 	err := root.ExecuteContext(ctx)
 	if err == nil {

@@ -5,33 +5,43 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
 
 	"steelyard/cache"
 	"steelyard/engine"
+	"steelyard/engine/history"
 	"steelyard/engine/weighing"
 	"steelyard/recipes"
 )
 
 func weighCommand(o *options) *cobra.Command {
 	var failAbove float64
+	var watch bool
 	c := &cobra.Command{
 		Use:   "weigh RECIPE...",
 		Short: "Do what is missing, then print masses, tensions and the verdict",
 		Long: `Reads each recipe, computes whatever of it is not in the store yet, and prints the masses, the
-tension between them at matched radii, and the verdict. With --json, one object a recipe, one a line.`,
-		Example: "  steelyard weigh recipes/examples/curlew/recipe.hcl\n  steelyard weigh --json --fail-above 3 cluster.hcl",
+tension between them at matched radii, and the verdict. With --json, one object a recipe, one a line.
+What recipes have in common is computed once. An interrupt (Ctrl-C) keeps what is finished; the same
+command goes on from there. With --watch, a recipe is weighed again whenever it, a file it includes
+or a data file changes, until an interrupt.`,
+		Example: "  steelyard weigh recipes/examples/curlew/recipe.hcl\n  steelyard weigh --json --fail-above 3 cluster.hcl\n  steelyard weigh --watch cluster.hcl",
 		Args:    cobra.MinimumNArgs(1),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			if cmd.Flags().Changed("fail-above") && !(failAbove > 0) {
 				return &exit{exitWrong, fmt.Errorf("--fail-above %g: a positive number of sigma is needed", failAbove)}
 			}
+			if watch {
+				return o.watch(cmd.Context(), args, failAbove)
+			}
 			return o.weigh(cmd.Context(), args, failAbove)
 		},
 	}
 	c.Flags().Float64Var(&failAbove, "fail-above", 0, "exit with status 3 when any tension exceeds this many sigma")
+	c.Flags().BoolVar(&watch, "watch", false, "weigh again whenever a recipe or its data change")
 	return c
 }
 
@@ -43,29 +53,27 @@ func (o *options) weigh(ctx context.Context, paths []string, failAbove float64) 
 	if err != nil {
 		return err
 	}
-	status := exitDone
+	status, printed := exitDone, false
 	for i, path := range paths {
 		w, err := o.weighOne(ctx, store, path)
 		if w != nil {
-			if printErr := o.print(w, i > 0); printErr != nil {
+			if printErr := o.print(w, printed); printErr != nil {
 				return &exit{exitFailed, printErr}
 			}
+			printed = true
 		}
 		if err == nil {
 			err = judge(w, failAbove)
 		}
-		var e *exit
-		switch {
-		case err == nil:
-		case errors.As(err, &e):
-			status = worse(status, e.status)
-		default:
-			status = worse(status, exitFailed)
-		}
+		status = worse(status, statusOf(err))
 		if text := errorText(err); text != "" {
 			fmt.Fprintf(o.err, "steelyard: error: %s\n", text)
 		}
-		if ctx.Err() != nil {
+		if ctx.Err() != nil && i+1 < len(paths) {
+			status = worse(status, exitFailed)
+			if context.Cause(ctx) != errChanged {
+				fmt.Fprintf(o.err, "steelyard: error: interrupted before %s\n", strings.Join(paths[i+1:], ", "))
+			}
 			break
 		}
 	}
@@ -77,6 +85,18 @@ func (o *options) weigh(ctx context.Context, paths []string, failAbove float64) 
 		return &exit{status, nil}
 	}
 	return nil
+}
+
+// statusOf is the exit status that an error stands for.
+func statusOf(err error) int {
+	var e *exit
+	switch {
+	case err == nil:
+		return exitDone
+	case errors.As(err, &e):
+		return e.status
+	}
+	return exitFailed
 }
 
 func errorText(err error) string {
@@ -107,30 +127,31 @@ func (o *options) weighOne(ctx context.Context, store *cache.Store, path string)
 	})
 	display.close()
 	o.warn(report.Warnings())
-	if err != nil {
+	switch {
+	case errors.Is(err, errChanged):
+		return nil, &exit{exitFailed, nil} // watch says why
+	case err != nil && ctx.Err() != nil:
+		done := report.Count(engine.Computed) + report.Count(engine.Reused)
+		err = fmt.Errorf("%s: interrupted with %d of %s done; they are kept, and the same command goes on from there",
+			path, done, plural(p.graph.Len(), "node"))
+		fallthrough
+	case err != nil:
 		return nil, &exit{exitFailed, err}
 	}
 	w, err := p.plan.Fill(ctx, report)
 	if err != nil {
 		return nil, &exit{exitFailed, err}
 	}
-	if err := remember(store, p.path, w); err != nil {
+	entry, fresh, err := history.Remember(store, p.path, version(), time.Now(), w, report.Results())
+	if err != nil {
 		o.warn([]string{err.Error()})
+	} else {
+		display.recorded(entry, fresh)
 	}
 	if n := len(w.Failures); n > 0 {
 		return w, &exit{exitFailed, fmt.Errorf("%s: %s failed, and what depends on it was not computed", path, plural(n, "node"))}
 	}
 	return w, nil
-}
-
-// remember records a weighing in the store's history.
-func remember(store *cache.Store, recipe string, w *weighing.Weighing) error {
-	body, err := w.Record()
-	if err != nil {
-		return err
-	}
-	_, err = store.Remember(cache.Weighing{Recipe: recipe, Finished: time.Now().UTC(), Program: version()}, body)
-	return err
 }
 
 func (o *options) print(w *weighing.Weighing, again bool) error {

@@ -2,6 +2,7 @@
 package layout
 
 import (
+	"fmt"
 	"strings"
 	"unicode/utf8"
 )
@@ -64,4 +65,25 @@ func Wrap(b *strings.Builder, head string, hang int, s string) {
 		line += word
 	}
 	b.WriteString(line + "\n")
+}
+
+// Bytes writes a size with two or three digits: "512 B", "3.4 MB", "12 GB".
+func Bytes(n int64) string {
+	x, units := float64(n), []string{"B", "kB", "MB", "GB", "TB"}
+	u := 0
+	for ; x >= 999.5 && u < len(units)-1; u++ {
+		x /= 1000
+	}
+	if u == 0 || x >= 9.95 {
+		return fmt.Sprintf("%.0f %s", x, units[u])
+	}
+	return fmt.Sprintf("%.1f %s", x, units[u])
+}
+
+// Seconds writes a duration with three digits: "0.4 ms", "4.17 s".
+func Seconds(s float64) string {
+	if s < 1 {
+		return fmt.Sprintf("%.3g ms", s*1000)
+	}
+	return fmt.Sprintf("%.3g s", s)
 }

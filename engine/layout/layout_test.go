@@ -43,3 +43,16 @@ func TestWrap(t *testing.T) {
 		t.Errorf("words were lost: %s", got)
 	}
 }
+
+func TestBytesAndSeconds(t *testing.T) {
+	for n, want := range map[int64]string{0: "0 B", 999: "999 B", 1000: "1.0 kB", 9949: "9.9 kB", 9951: "10 kB", 999499: "999 kB", 999500: "1.0 MB", 4 << 30: "4.3 GB", 1 << 60: "1152922 TB"} {
+		if got := Bytes(n); got != want {
+			t.Errorf("%d: %q, want %q", n, got, want)
+		}
+	}
+	for s, want := range map[float64]string{0: "0 ms", 0.000402: "0.402 ms", 0.15: "150 ms", 4.171: "4.17 s", 75: "75 s"} {
+		if got := Seconds(s); got != want {
+			t.Errorf("%g: %q, want %q", s, got, want)
+		}
+	}
+}
