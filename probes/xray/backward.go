@@ -20,7 +20,7 @@ var backward = estimate.Method{
 		Equation: "n_e kT(r) = p_e + ∫ from r to r_e of μ m_p (1 − f) n_e G M(<r′)/r′² dr′,   p_e = η × the weight of the gas beyond r_e\n" +
 			"kT of a bin = ∫ n² T^(1/4) dV / ∫ n² T^(−3/4) dV along the whole line of sight, divided by temperature_scale",
 		Sources: []string{"Ettori et al. 2010", "Ettori et al. 2013", "Mazzotta et al. 2004", "Vikhlinin et al. 2006"},
-		Data:    [][]string{{"density", "temperature"}},
+		Data:    gasData,
 		Settings: append([]method.Setting{
 			haloSetting,
 			massSetting,

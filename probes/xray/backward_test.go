@@ -217,7 +217,7 @@ func TestCautions(t *testing.T) {
 			for i := range values(task, "density", "value") {
 				values(task, "density", "value")[i] *= 1 + 0.2*math.Cos(3*float64(i))
 			}
-		}, "the density form fits the shells poorly"},
+		}, "the density form fits its data poorly"},
 	} {
 		task := observed(t, truth.Spectra(mock.Gas{Electrons: coolCore.Electrons}, typical(), rand.New(rand.NewPCG(6, 1))))
 		c.spoil(task)

@@ -30,6 +30,9 @@ const mostComplaints = 8
 // readBins takes bins out of a table: edges as inner and outer or as radius and
 // half_width, errors as error, minus and plus or low and high. It refuses what
 // cannot be a profile, naming the file and the row.
+//
+// A density or a temperature is positive; a surface brightness may fall below
+// zero when a background was taken off.
 func readBins(t *estimate.Task, block, quantity string) (*Bins, error) {
 	table := t.Tables[block]
 	if table == nil {
@@ -87,7 +90,7 @@ func (b *Bins) check(t *estimate.Task, table *catalogue.Table, rows []int, quant
 			fault(i, "the bin begins at %.4g kpc, inside the centre", b.Inner[i])
 		case width <= 0:
 			fault(i, "the outer edge, %.4g kpc, does not lie outside the inner edge, %.4g kpc", b.Outer[i], b.Inner[i])
-		case b.Value[i] <= 0:
+		case b.Value[i] <= 0 && quantity != brightness:
 			fault(i, "a %s of %g is not positive; leave out bins without a detection", quantity, b.Value[i])
 		case b.Minus[i] == 0 || b.Plus[i] == 0:
 			fault(i, "an error of zero on the %s: a bin without an error cannot be weighed against the others", quantity)

@@ -59,6 +59,28 @@ var densityBlock = method.Block{
 	},
 }
 
+var brightnessBlock = method.Block{
+	Name: "surface_brightness",
+	Doc: "The X-ray surface brightness in annuli, instead of a density: a form of the density is projected and fitted to it. " +
+		"The unit of the values is free, since emission_measure_per_count turns them into emission measures.",
+	Columns:      append(append([]method.Column{}, edges...), measured("", "surface brightness of the annulus")...),
+	Alternatives: alternatives,
+	Settings: []method.Setting{
+		{
+			Name: "emission_measure_per_count", Kind: method.Exact, Unit: "cm**-6 kpc", Required: true, Low: 1e-30, High: 1e30,
+			Doc: "the emission measure along the line of sight, ∫ n_e n_p dl, of a surface brightness of one, for the instrument, the band and a typical temperature and abundance",
+		},
+		{
+			Name: "background", Kind: method.Measured, Default: method.Exactly(0),
+			Doc: "surface brightness of the sky and the instrument, in the unit of the values; with an error it is fitted with the density",
+		},
+		{
+			Name: "model", Kind: method.Choice, Choices: []string{string(Beta), string(DoubleBeta), string(ModifiedBeta)},
+			Doc: "the form of the density; as in the density block", Source: "Cavaliere & Fusco-Femiano 1978; LaRoque et al. 2006; Vikhlinin et al. 2006",
+		},
+	},
+}
+
 var temperatureBlock = method.Block{
 	Name:         "temperature",
 	Doc:          "Temperatures kT from spectra, one row a bin.",

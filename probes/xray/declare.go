@@ -10,13 +10,16 @@ import (
 var Probe = estimate.Probe{
 	Name:   "xray",
 	Doc:    "Hot gas in hydrostatic equilibrium: its density and temperature give the mass that holds it.",
-	Blocks: []method.Block{densityBlock, temperatureBlock},
+	Blocks: []method.Block{densityBlock, brightnessBlock, temperatureBlock},
 	Reductions: []estimate.Reduction{
-		{Name: "density", Version: 1, From: []string{"density"}, Run: reduceDensity},
+		{Name: "density", Version: 2, From: []string{"density?", "surface_brightness?"}, Run: reduceDensity},
 		{Name: "temperature", Version: 2, From: []string{"temperature", "temperature.mixing?"}, Run: reduceTemperature},
 	},
 	Methods: []estimate.Method{backward, forward, isothermalBetaMethod},
 }
+
+// gasData are the data blocks of every hydrostatic method.
+var gasData = [][]string{{"density", "temperature"}, {"surface_brightness", "temperature"}}
 
 // gasCautions hold for every hydrostatic method.
 var gasCautions = []string{

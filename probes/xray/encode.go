@@ -21,6 +21,14 @@ func (e *encoder) number(x float64) {
 
 func (e *encoder) count(n int) { e.b = binary.LittleEndian.AppendUint64(e.b, uint64(n)) }
 
+func (e *encoder) flag(b bool) {
+	if b {
+		e.count(1)
+	} else {
+		e.count(0)
+	}
+}
+
 func (e *encoder) numbers(v []float64) {
 	e.count(len(v))
 	for _, x := range v {
@@ -85,6 +93,12 @@ func (d *decoder) count() int {
 	return int(n)
 }
 
+func (d *decoder) flag() bool {
+	b := d.bits()
+	d.bad = d.bad || b > 1
+	return b == 1
+}
+
 func (d *decoder) numbers() []float64 {
 	out := make([]float64, d.count())
 	for i := range out {
@@ -112,7 +126,7 @@ func (d *decoder) end() error {
 }
 
 const (
-	gasFormat         = "steelyard/xray/density/1"
+	gasFormat         = "steelyard/xray/density/2"
 	temperatureFormat = "steelyard/xray/temperature/2"
 )
 
@@ -129,7 +143,7 @@ func (g *Gas) MarshalBinary() ([]byte, error) {
 	e.number(g.Inner)
 	e.number(g.Outer)
 	e.word(g.Words)
-	e.count(g.Shells)
+	e.flag(g.Fitted)
 	e.number(g.Chi2)
 	e.count(g.Dof)
 	e.words(g.Notes)
@@ -148,7 +162,7 @@ func (g *Gas) UnmarshalBinary(b []byte) error {
 	}
 	g.Inner, g.Outer = d.number(), d.number()
 	g.Words = d.word()
-	g.Shells, g.Chi2, g.Dof = int(d.bits()), d.number(), int(d.bits())
+	g.Fitted, g.Chi2, g.Dof = d.flag(), d.number(), int(d.bits())
 	g.Notes = d.words()
 	if err := d.end(); err != nil {
 		return err
@@ -163,11 +177,7 @@ func (g *Gas) UnmarshalBinary(b []byte) error {
 func (s *Spectra) MarshalBinary() ([]byte, error) {
 	var e encoder
 	e.word(temperatureFormat)
-	projected := 0
-	if s.Projected {
-		projected = 1
-	}
-	e.count(projected)
+	e.flag(s.Projected)
 	for _, v := range [][]float64{s.Inner, s.Outer, s.Value, s.Minus, s.Plus} {
 		e.numbers(v)
 	}
@@ -182,7 +192,7 @@ func (s *Spectra) UnmarshalBinary(b []byte) error {
 	if d.word() != temperatureFormat {
 		return errDamaged
 	}
-	*s = Spectra{Projected: d.bits() == 1}
+	*s = Spectra{Projected: d.flag()}
 	s.Inner, s.Outer, s.Value, s.Minus, s.Plus = d.numbers(), d.numbers(), d.numbers(), d.numbers(), d.numbers()
 	if mixing := d.numbers(); len(mixing) > 0 {
 		s.Mixing = mixing

@@ -10,7 +10,7 @@ import (
 func TestEncoding(t *testing.T) {
 	gas := gasOf(coolCore)
 	gas.Moves = [][]float64{{1, 2, 3, 4, 5, 6, 7, 8, 9, 10}}
-	gas.Inner, gas.Outer, gas.Words, gas.Shells, gas.Chi2, gas.Dof, gas.Notes = 1, 2000, "a form", 50, 44.5, 44, []string{"one", "two"}
+	gas.Inner, gas.Outer, gas.Words, gas.Fitted, gas.Chi2, gas.Dof, gas.Notes = 1, 2000, "a form", true, 44.5, 44, []string{"one", "two"}
 	b, err := gas.MarshalBinary()
 	if err != nil {
 		t.Fatal(err)

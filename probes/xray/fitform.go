@@ -12,11 +12,17 @@ import "math"
 type coordinate struct {
 	index    int
 	mean, sd float64
-	bounded  float64 // 0: the parameter is eˣ; else it is bounded/(1+e⁻ˣ)
+	bounded  float64 // 0: the parameter is eˣ; linear: it is x; else it is bounded/(1+e⁻ˣ)
 }
 
+// linear marks a coordinate that is the parameter itself.
+const linear = -1
+
 func (c coordinate) value(x float64) float64 {
-	if c.bounded > 0 {
+	switch {
+	case c.bounded == linear:
+		return x
+	case c.bounded > 0:
 		return c.bounded / (1 + math.Exp(-x))
 	}
 	return math.Exp(x)
@@ -25,7 +31,10 @@ func (c coordinate) value(x float64) float64 {
 // derivative is that of value.
 func (c coordinate) derivative(x float64) float64 {
 	v := c.value(x)
-	if c.bounded > 0 {
+	switch {
+	case c.bounded == linear:
+		return 1
+	case c.bounded > 0:
 		return v * (1 - v/c.bounded)
 	}
 	return v
@@ -109,72 +118,25 @@ func (f *family) second(x []float64, shells *Bins) *family {
 	return two
 }
 
-// shellFit compares a family with shells.
-type shellFit struct {
+// formFit compares a family with data.
+type formFit struct {
 	*family
-	shells *Bins
-	r      []float64 // quadrature nodes, kpc
-	weight []float64 // of n² at each node, summing to one over a shell
-	end    []int     // for each shell, one past its last node
+	data    *Bins
+	predict func(p, out []float64) // what the data would be for the parameters p
 }
 
-func newShellFit(f *family, shells *Bins) *shellFit {
-	s := &shellFit{family: f, shells: shells}
-	for i, inner := range shells.Inner {
-		outer := shells.Outer[i]
-		// The integrand is smooth: ten nodes where a shell spans a large factor of
-		// radius, as the innermost may; every fifth of the way is enough elsewhere.
-		pieces := 1
-		if inner == 0 || outer/inner > 1.5 {
-			pieces = len(gauss.x)
-		}
-		volume := outer*outer*outer - inner*inner*inner
-		add := func(r, dr float64) {
-			s.r = append(s.r, r)
-			s.weight = append(s.weight, 3*r*r*dr/volume)
-		}
-		if pieces == 1 {
-			half := (outer - inner) / 2
-			mid := (outer + inner) / 2
-			for _, x := range []float64{-1, 1} { // two-point Gauss–Legendre
-				add(mid+x*half/math.Sqrt(3), half)
-			}
-		} else {
-			half := (outer - inner) / 2
-			for q, x := range gauss.x {
-				add(inner+half*(1+x), half*gauss.w[q])
-			}
-		}
-		s.end = append(s.end, len(s.r))
-	}
-	return s
-}
-
-// means fills out with the root mean square of n_e in every shell, which is
-// what a deprojected emission measure yields.
-func (s *shellFit) means(p, out []float64) {
-	j := 0
-	for i, end := range s.end {
-		var sum float64
-		for ; j < end; j++ {
-			sum += s.weight[j] * math.Exp(2*s.form.lnElectrons(p, s.r[j]))
-		}
-		out[i] = math.Sqrt(sum)
-	}
-}
-
-// residuals fills out with (model − datum)/error of every shell, the side of
-// the error chosen by the model, then with (x − mean)/sd of every coordinate:
+// residuals fills out with (model − datum)/error of every bin, the side of the
+// error chosen by the model, then with (x − mean)/sd of every coordinate:
 // −½ Σ out² is the log posterior.
-func (s *shellFit) residuals(x, out []float64) {
-	n := s.shells.Len()
-	s.means(s.parameters(x), out[:n])
-	for i, v := range s.shells.Value {
+func (s *formFit) residuals(x, out []float64) {
+	n := s.data.Len()
+	s.predict(s.parameters(x), out[:n])
+	for i, v := range s.data.Value {
 		d := out[i] - v
 		if d > 0 {
-			out[i] = d / s.shells.Plus[i]
+			out[i] = d / s.data.Plus[i]
 		} else {
-			out[i] = d / s.shells.Minus[i]
+			out[i] = d / s.data.Minus[i]
 		}
 	}
 	for i, c := range s.fitted {
@@ -182,4 +144,4 @@ func (s *shellFit) residuals(x, out []float64) {
 	}
 }
 
-func (s *shellFit) size() int { return s.shells.Len() + len(s.fitted) }
+func (s *formFit) size() int { return s.data.Len() + len(s.fitted) }

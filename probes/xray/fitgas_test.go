@@ -42,7 +42,7 @@ func TestShellsRecovered(t *testing.T) {
 		"cool":  {coolCore, "", "two components"},
 		"beta":  {mock.VikhlininGas{N0: 0.008, Rc: 120, Beta: 0.6, Rs: 1, Rc2: 1}, Beta, "a β model"},
 	} {
-		g, err := fitShells(c.form, shellsOf(c.gas.Electrons, edges, 0.002, nil))
+		g, err := ofShells(shellsOf(c.gas.Electrons, edges, 0.002, nil)).fit(c.form)
 		if err != nil {
 			t.Fatal(name, err)
 		}
@@ -68,7 +68,7 @@ func TestShellsWithNoise(t *testing.T) {
 	rng := rand.New(rand.NewPCG(11, 12))
 	var chi2, pull []float64
 	for range 40 {
-		g, err := fitShells(ModifiedBeta, shellsOf(plain.Electrons, edges, 0.03, rng))
+		g, err := ofShells(shellsOf(plain.Electrons, edges, 0.03, rng)).fit(ModifiedBeta)
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -102,11 +102,11 @@ func TestDensityErrors(t *testing.T) {
 	plain := mock.VikhlininGas{N0: 0.008, Rc: 120, Beta: 0.6, Alpha: 0.9, Rs: 1100, Epsilon: 1.5}
 	shells := shellsOf(plain.Electrons, edgesBetween(10, 1700, 40, true), 0.05, rand.New(rand.NewPCG(3, 4)))
 	f := newFamily(ModifiedBeta, shells)
-	g, best, err := fitFamily(f, shells)
+	g, best, err := ofShells(shells).fitFamily(f)
 	if err != nil {
 		t.Fatal(err)
 	}
-	s := newShellFit(f, shells)
+	s := &formFit{f, shells, shellMeans(f.form, shells)}
 	j := jacobian(s.residuals, best, s.size())
 	var normal, covariance mat.SymDense
 	normal.SymOuterK(1, j.T())

@@ -18,7 +18,7 @@ var forward = estimate.Method{
 		Equation: "M(<r) = −(kT r / G μ m_p (1 − f)) (d ln n_e/d ln r + d ln T/d ln r)\n" +
 			"kT of a bin = ∫ n² T^(1/4) dV / ∫ n² T^(−3/4) dV along the whole line of sight, divided by temperature_scale",
 		Sources: []string{"Vikhlinin et al. 2006", "Mazzotta et al. 2004"},
-		Data:    [][]string{{"density", "temperature"}},
+		Data:    gasData,
 		Settings: append([]method.Setting{{
 			Name: "temperature_form", Kind: method.Choice, Choices: []string{"by-bins", shortForm, coolCoreForm, fullForm}, Default: method.Word("by-bins"),
 			Doc: "the form of the temperature: `full` is eq. 6 of Vikhlinin et al. 2006 with a = 0 (seven parameters), `cool-core` has b = 2 and acool = 1.9 besides (five), " +

@@ -25,10 +25,10 @@ type Gas struct {
 	// Moves holds for each direction the change of every parameter: φ_k is the
 	// derivative of ln n_e along Moves[k].
 	Moves [][]float64
-	// Inner and Outer bound the shells, in kpc; both zero for a published model.
+	// Inner and Outer bound the data, in kpc; both zero for a published model.
 	Inner, Outer float64
-	Words        string // the form, for the reader
-	Shells       int    // number of shells fitted
+	Words        string // the form and what it was fitted to, for the reader
+	Fitted       bool   // to data, rather than published
 	Chi2         float64
 	Dof          int
 	Notes        []string

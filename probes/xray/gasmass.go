@@ -97,6 +97,6 @@ func (f *fit) addGas(d *infer.Draws, sample *infer.Sample) {
 		infer.Parameter{Name: "gas_mass_500c", Unit: "solMass", Values: mass},
 		infer.Parameter{Name: "gas_fraction_500c", Values: share})
 	if r := infer.Percentiles(radius, 50)[0]; f.gas.Outer > 0 && r > f.gas.Outer {
-		d.Warnings = append(d.Warnings, fmt.Sprintf("gas_mass_500c and gas_fraction_500c are extrapolated: r_500 is %.4g kpc and the density shells end at %.4g kpc", r, f.gas.Outer))
+		d.Warnings = append(d.Warnings, fmt.Sprintf("gas_mass_500c and gas_fraction_500c are extrapolated: r_500 is %.4g kpc and the density data end at %.4g kpc", r, f.gas.Outer))
 	}
 }

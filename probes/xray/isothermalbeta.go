@@ -16,7 +16,7 @@ var isothermalBetaMethod = estimate.Method{
 		Summary:  "The closed form for gas of one temperature with the density of a β model.",
 		Equation: "M(<r) = 3 β kT r³ / (G μ m_p (1 − f) (r² + rc²))",
 		Sources:  []string{"Cavaliere & Fusco-Femiano 1978"},
-		Data:     [][]string{{"density", "temperature"}},
+		Data:     gasData,
 		Settings: gasAssumptions,
 		Cautions: append([]string{
 			"the density block must say `model = \"beta\"`, with its parameters or with a file that a β model is fitted to",

@@ -33,7 +33,13 @@ const (
 func reduceDensity(_ context.Context, t *estimate.Task) (encoding.BinaryMarshaler, error) {
 	block := t.Blocks["density"]
 	form := Form(block["model"].Text)
-	if t.Tables["density"] == nil {
+	_, bright := t.Blocks["surface_brightness"]
+	switch {
+	case bright && block != nil:
+		return nil, t.Errorf("both a density and a surface brightness are given; the density is fitted to one of them")
+	case bright:
+		return reduceBrightness(t)
+	case t.Tables["density"] == nil:
 		return published(t, form, block)
 	}
 	for _, p := range ModifiedBeta.parameters() {
@@ -54,7 +60,7 @@ func reduceDensity(_ context.Context, t *estimate.Task) (encoding.BinaryMarshale
 	if shells.Len() < 3 {
 		return nil, t.Errorf("%s: %d shell(s) of density; a density profile needs at least 3", table.File, shells.Len())
 	}
-	gas, err := fitShells(form, shells)
+	gas, err := ofShells(shells).fit(form)
 	if err != nil {
 		return nil, t.Errorf("%s: %w", table.File, err)
 	}

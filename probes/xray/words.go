@@ -67,8 +67,8 @@ func (f *fit) covers() [2]float64 {
 func (g *Gas) describe(r float64) string {
 	slope, sd := g.Slope(r)
 	s := "density: " + g.Words
-	if g.Shells > 0 {
-		s += fmt.Sprintf(" fitted to %d shells, χ² = %.1f for %d degrees of freedom", g.Shells, g.Chi2, g.Dof)
+	if g.Fitted {
+		s += fmt.Sprintf(", χ² = %.1f for %d degrees of freedom", g.Chi2, g.Dof)
 	}
 	s += fmt.Sprintf("; its logarithmic slope is %.2f", slope)
 	if sd > 0 {
@@ -95,17 +95,17 @@ func (f *fit) warnings(q bestFit) []string {
 	if kT := s.coolest(); kT < coolGas {
 		w = append(w, fmt.Sprintf("the coolest bin has kT = %.2g keV; below %d keV the weight that turns gas into a spectral temperature is not calibrated", kT, coolGas))
 	}
-	if g.Shells > 0 {
+	if g.Fitted {
 		if g.Dof > 0 {
 			if p := infer.ChiSquareP(g.Chi2, g.Dof); p < poorFit {
-				w = append(w, fmt.Sprintf("the density form fits the shells poorly: χ² = %.0f for %d degrees of freedom (p = %.1g); its error is too small", g.Chi2, g.Dof, p))
+				w = append(w, fmt.Sprintf("the density form fits its data poorly: χ² = %.0f for %d degrees of freedom (p = %.1g); its error is too small", g.Chi2, g.Dof, p))
 			}
 		}
 		if g.Outer < s.Outer[n-1]*(1-touching) {
-			w = append(w, fmt.Sprintf("the density shells end at %.4g kpc, inside the temperature bins, which end at %.4g kpc: the density between is extrapolated", g.Outer, s.Outer[n-1]))
+			w = append(w, fmt.Sprintf("the density data end at %.4g kpc, inside the temperature bins, which end at %.4g kpc: the density between is extrapolated", g.Outer, s.Outer[n-1]))
 		}
 		if g.Inner > s.Outer[0] {
-			w = append(w, fmt.Sprintf("the density shells begin at %.4g kpc, outside the first temperature bin, which ends at %.4g kpc: the density inside is extrapolated", g.Inner, s.Outer[0]))
+			w = append(w, fmt.Sprintf("the density data begin at %.4g kpc, outside the first temperature bin, which ends at %.4g kpc: the density inside is extrapolated", g.Inner, s.Outer[0]))
 		}
 	}
 	if slope, _ := g.Slope(2 * s.Outer[n-1]); slope > -1.2 || slope < -4.5 {
