@@ -305,16 +305,8 @@ func summary(e planned, d *infer.Draws, definitions []halo.Definition, b reconci
 	if err != nil {
 		return nil, err
 	}
-	for _, m := range own {
-		delta := m.Definition.Delta
-		if m.Definition.Of == "virial" {
-			if delta, err = b.Cosmology.VirialOverdensity(b.Redshift); err != nil {
-				return nil, err
-			}
-		}
-		s.Own = append(s.Own, weighing.Own{
-			Overdensity: delta, Of: m.Definition.Of, Radius: weighing.Interval(m.Radius), Mass: weighing.Interval(m.Mass), Extrapolated: m.Extrapolated,
-		})
+	if s.Own, err = ownMasses(own, b); err != nil {
+		return nil, err
 	}
 	for _, c := range d.Checks {
 		check := weighing.Check{Name: c.Name, Statistic: c.Statistic, Passed: c.Passed, Note: c.Note}

@@ -38,7 +38,8 @@ func (p *Plan) Fill(ctx context.Context, o Outcome) (*weighing.Weighing, error) 
 			return nil, err
 		}
 	}
-	w.Tensions, w.Consistency, w.Warnings = compared.Tensions, compared.Consistency, compared.Warnings
+	w.Tensions, w.Profiles, w.Spreads = compared.Tensions, compared.Profiles, compared.Spreads
+	w.Consistency, w.Combined, w.Whole, w.Warnings = compared.Consistency, compared.Combined, compared.Whole, compared.Warnings
 	for _, e := range p.estimates {
 		if !done[e.masses] {
 			continue

@@ -51,7 +51,7 @@ func New(r *recipes.Recipe) (*Plan, error) {
 		p.Nodes = append(p.Nodes, p.massesNode(e))
 	}
 	if r.Reconcile != nil {
-		p.Nodes = append(p.Nodes, p.compareNodes()...)
+		p.Nodes = append(p.Nodes, p.compareNodes(p.sources(), "")...)
 	}
 	return p, nil
 }

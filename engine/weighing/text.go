@@ -145,9 +145,6 @@ func (t *text) place(label string) {
 		if x.Tail {
 			sigma = "≈" + sigma
 		}
-		if x.SameData {
-			family = "same data"
-		}
 		rows = append(rows, []string{x.A + " / " + x.B, x.Ratio.String(), sigma, probability(x.PValue), family})
 	}
 	t.table(rows)

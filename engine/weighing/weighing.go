@@ -26,7 +26,11 @@ type Weighing struct {
 	Cosmology   Cosmology     `json:"cosmology"`
 	Estimates   []Estimate    `json:"estimates"`
 	Tensions    []Tension     `json:"tensions,omitempty"`
+	Profiles    []Profile     `json:"profile_tensions,omitempty"`
+	Spreads     []Spread      `json:"method_spread,omitempty"`
 	Consistency []Consistency `json:"consistency,omitempty"`
+	Combined    []Combined    `json:"combined,omitempty"`
+	Whole       *Whole        `json:"combined_profile,omitempty"`
 	Warnings    []string      `json:"warnings,omitempty"` // of the comparison
 	Failures    []Failure     `json:"failures,omitempty"`
 	Nodes       []Node        `json:"nodes"`
@@ -101,32 +105,6 @@ type Check struct {
 	PValue    *float64 `json:"p_value,omitempty"` // absent where the check has none
 	Passed    bool     `json:"passed"`
 	Note      string   `json:"note,omitempty"`
-}
-
-// Tension is the ratio of two estimates at one place.
-type Tension struct {
-	At       string   `json:"at"`
-	A        string   `json:"a"`
-	B        string   `json:"b"`
-	Radii    string   `json:"radii"` // "matched" or "own"
-	Ratio    Interval `json:"ratio"`
-	Sigma    float64  `json:"sigma"`
-	Tail     bool     `json:"tail,omitempty"`
-	PValue   float64  `json:"p_value"`
-	PFamily  float64  `json:"p_family"`
-	SameData bool     `json:"same_data,omitempty"`
-}
-
-// Consistency is the agreement of all compared estimates at one place.
-type Consistency struct {
-	At      string   `json:"at"`
-	Chi2    float64  `json:"chi2"`
-	Dof     int      `json:"dof"`
-	PValue  float64  `json:"p_value"`
-	Sigma   float64  `json:"sigma"`
-	Tail    bool     `json:"tail,omitempty"`
-	Verdict string   `json:"verdict"`
-	Of      []string `json:"of"`
 }
 
 // Failure is a node that could not be computed.

@@ -43,10 +43,7 @@ func BenchmarkFiveEstimatesAtFiveRadii(b *testing.B) {
 	estimates := fiveEstimates()
 	places := []At{{Radius: 400}, {Radius: 600}, {Radius: 800}, {Radius: 1000}, {Radius: 1500}}
 	for b.Loop() {
-		m, err := MatchAll(estimates, places, "", Background{}, infer.NewStream("bench"))
-		if err != nil {
-			b.Fatal(err)
-		}
+		m := matchEstimates(b, Setup{Estimates: estimates, Places: places})
 		if _, err := Compare(m, Limits, infer.NewStream("bench")); err != nil {
 			b.Fatal(err)
 		}

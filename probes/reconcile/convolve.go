@@ -2,7 +2,6 @@ package reconcile
 
 import (
 	"math"
-	"math/cmplx"
 	"slices"
 	"sort"
 
@@ -76,23 +75,27 @@ func newHistogram(x []float64, step float64) histogram {
 // of the transforms.
 func sumDensity(parts []histogram, step, width float64) grid {
 	fft := fourier.NewFFT(cells)
-	pad := 8 * width
-	g := grid{from: -pad, step: step}
+	pad := int(8 * width / step)
+	g := grid{from: -float64(pad) * step, step: step}
 	total := make([]complex128, cells/2+1)
 	for i := range total {
 		k := 2 * math.Pi * float64(i) / (cells * step)
-		total[i] = cmplx.Rect(math.Exp(-k*k*width*width/2), -k*pad)
+		total[i] = complex(math.Exp(-k*k*width*width/2), 0)
 	}
-	buffer := make([]float64, cells)
-	for _, h := range parts {
+	buffer, transform := make([]float64, cells), make([]complex128, cells/2+1)
+	for n, h := range parts {
 		g.from += h.from
 		clear(buffer)
-		copy(buffer, h.values)
-		for i, c := range fft.Coefficients(nil, buffer) {
+		from := 0
+		if n == 0 {
+			from = pad
+		}
+		copy(buffer[from:], h.values)
+		for i, c := range fft.Coefficients(transform, buffer) {
 			total[i] *= c
 		}
 	}
-	g.values = fft.Sequence(nil, total)
+	g.values = fft.Sequence(buffer, total)
 	for i, v := range g.values {
 		// Rounding leaves ±1e-17 where the density vanishes.
 		g.values[i] = max(v/cells/step, 0)
@@ -105,6 +108,7 @@ func sumDensity(parts []histogram, step, width float64) grid {
 // carry it beyond.
 type density struct {
 	grid
+	cumulative   grid // the running integral
 	lower, upper tail
 	order        []float64 // densities of the points between the tails, rising
 	below        []float64 // probability of those up to order[i]
@@ -140,10 +144,11 @@ func convolve(parts ...[]float64) *density {
 		histograms[k] = newHistogram(p, step)
 	}
 	d := &density{grid: sumDensity(histograms, step, width)}
-	d.lower = lowerTail(d.cumulate(), shares, n)
-	d.upper = lowerTail(d.mirror().cumulate(), shares, n)
+	d.cumulative = d.cumulate()
+	trust := newConfidence(shares, n)
+	d.lower = trust.lowerTail(d.cumulative)
+	d.upper = trust.lowerTail(d.mirror().cumulate())
 	d.upper.x = -d.upper.x
-	d.rank()
 	return d
 }
 
@@ -154,6 +159,18 @@ func shrink(x []float64) []float64 {
 	out := make([]float64, len(x))
 	for i, v := range x {
 		out[i] = mean + math.Sqrt(1-kernel*kernel)*(v-mean)
+	}
+	return out
+}
+
+// quantiles are the values below which the given shares of the probability lie.
+func (d *density) quantiles(shares ...float64) []float64 {
+	c := d.cumulative
+	out := make([]float64, len(shares))
+	for k, p := range shares {
+		p *= c.values[len(c.values)-1]
+		i := max(sort.SearchFloat64s(c.values, p), 1)
+		out[k] = c.x(i) - c.step*(c.values[i]-p)/max(c.values[i]-c.values[i-1], 1e-300)
 	}
 	return out
 }
@@ -189,6 +206,9 @@ func (d *density) log(x float64) float64 {
 // fitted tail was used to tell (Raveri & Doux 2021, their eq. for the
 // probability mass outside the isodensity contour through x).
 func (d *density) LessLikely(x float64) (p float64, fitted bool) {
+	if d.order == nil {
+		d.rank()
+	}
 	level := d.log(x)
 	fitted = d.lower.x-x > d.lower.resolved || x-d.upper.x > d.upper.resolved
 	p = d.lower.lessLikely(level) + d.upper.lessLikely(level)
@@ -198,4 +218,17 @@ func (d *density) LessLikely(x float64) (p float64, fitted bool) {
 	}
 	// Nothing here is known to 1e-300; it keeps a significance finite.
 	return min(max(p, 1e-300), 1), fitted || rho == 0
+}
+
+// tabulate is LessLikely between the smallest and the largest of some values, at
+// points 1/40 of a standard deviation apart or closer.
+func (d *density) tabulate(values []float64) grid {
+	_, sd := meanSD(values)
+	from, to := slices.Min(values), slices.Max(values)
+	points := int((to-from)/(sd/40)) + 2
+	g := grid{from: from, step: (to - from) / float64(points-1), values: make([]float64, points)}
+	for i := range g.values {
+		g.values[i], _ = d.LessLikely(g.x(i))
+	}
+	return g
 }

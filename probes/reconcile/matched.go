@@ -4,66 +4,239 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 
-	"steelyard/probes/cosmology"
 	"steelyard/probes/halo"
 	"steelyard/probes/infer"
 )
 
-// Estimate is one mass estimate to be compared.
-type Estimate struct {
-	Name  string // reference in the recipe: "lensing.shapes.nfw"
-	Block string // the block whose data it is made from: "lensing.shapes"
-	Draws *infer.Draws
+// Matching holds the compared estimates' masses at every place.
+type Matching struct {
+	Compared []Compared
+	Members  []int // of Compared: those that are independent evidence
+	Places   []Matched
+	Combined []CombinedProfile
+	Warnings []string
 }
 
-// At is one place where masses are compared: a radius, or an overdensity.
-type At struct {
-	Radius     float64         // kpc; 0 for an overdensity
-	Definition halo.Definition // when Radius is 0
+// Compared is what a comparison must know of an estimate besides its masses.
+type Compared struct {
+	Name         string
+	Block        string     // whose data it is made from
+	Covers       [2]float64 // kpc
+	PoorlyFitted bool       // its fit has p < 1e-3
+	NotConverged bool       // its draws cannot be trusted
 }
 
-// String is the label of the place in text and JSON.
-func (a At) String() string {
-	switch {
-	case a.Radius > 0:
-		return fmt.Sprintf("radius %.6g kpc", a.Radius)
-	case a.Definition.Of == "virial":
-		return "overdensity virial"
-	case a.Definition.Of == "mean":
-		return fmt.Sprintf("overdensity %g mean", a.Definition.Delta)
+// poorFit is the p-value below which a fit is called poor.
+const poorFit = 1e-3
+
+// Matched holds every estimate's mass at one place.
+type Matched struct {
+	At  At
+	Own bool // read at each estimate's own radius rather than at one radius
+	// Radius is R_Δ of the estimate whose radii are matched, in kpc: the median is
+	// the radius of the place. Zero where the radius was fixed or is each
+	// estimate's own.
+	Radius Interval
+	Marks  []Mark
+	// LnMass[k][i] is ln M of estimate k in joint draw i; Common[k][i] is the part
+	// of it that the shared nuisances of draw i carry, nil when nothing is shared.
+	LnMass, Common [][]float64
+}
+
+// Mark is one estimate's mass at one place, from its own draws alone.
+type Mark struct {
+	Name         string
+	Radius       float64 // kpc; the median where each draw has its own
+	Mass         Interval
+	LnMean, LnSD float64
+	Extrapolated bool
+	// Slope is by how much the median ln M rises when the radius moves by its own
+	// error; 0 where Matched.Radius is.
+	Slope float64
+}
+
+// MatchAll reads the joint draws at every place: at one radius for all, which
+// for an overdensity is the median R_Δ of the estimate RadiiFrom, or (Own) each
+// at its own radius, draw by draw.
+func MatchAll(s Setup, joint *Joint, stream infer.Stream) (*Matching, error) {
+	if len(s.Estimates) < 2 {
+		return nil, errors.New("a comparison needs two estimates or more")
 	}
-	return fmt.Sprintf("overdensity %g", a.Definition.Delta)
+	m := &Matching{Warnings: slices.Clone(joint.Warnings)}
+	carriers := make([]*carrier, len(s.Estimates))
+	for k, e := range s.Estimates {
+		q := e.Draws.Quality
+		m.Compared = append(m.Compared, Compared{
+			Name: e.Name, Block: e.Block, Covers: e.Draws.Covers,
+			PoorlyFitted: q.Dof > 0 && q.PValue < poorFit, NotConverged: !q.Converged,
+		})
+		var err error
+		if carriers[k], err = joint.newCarrier(k, e); err != nil {
+			return nil, err
+		}
+	}
+	m.Members = s.members(m)
+	m.Warnings = append(m.Warnings, m.doubts(s.RadiiFrom)...)
+	for _, at := range s.Places {
+		place, err := s.match(carriers, at)
+		if err != nil {
+			return nil, fmt.Errorf("%s: %w", at, err)
+		}
+		m.Places = append(m.Places, *place)
+	}
+	return m, s.combineProfiles(m, carriers, stream)
 }
 
-// Own is From when each estimate is read at its own radius, draw by draw.
-const Own = "own"
-
-// Background is what turns an overdensity into a density.
-type Background struct {
-	Cosmology *cosmology.Cosmology
-	Redshift  float64
+// members lists the estimates that are independent evidence: of those made from
+// the same data the preferred one, or the first. Draws that are the same number
+// for number are one estimate under two names.
+func (s Setup) members(m *Matching) []int {
+	for k, e := range s.Estimates {
+		for l, f := range s.Estimates[:k] {
+			if slices.Equal(e.Draws.LnMass, f.Draws.LnMass) {
+				m.Compared[k].Block = m.Compared[l].Block
+				m.Warnings = append(m.Warnings, fmt.Sprintf("%s and %s are the same draw by draw: one mass, not two", f.Name, e.Name))
+				break
+			}
+		}
+	}
+	var members []int
+	for k, c := range m.Compared {
+		if s.representative(m.Compared, c.Block) == k {
+			members = append(members, k)
+		}
+	}
+	return members
 }
 
-func (b Background) threshold(d halo.Definition) (float64, error) {
-	return d.Threshold(b.Cosmology, b.Redshift)
+// representative is the preferred estimate among those made from a block's data,
+// the first of them when none is.
+func (s Setup) representative(compared []Compared, block string) int {
+	first := -1
+	for k, c := range compared {
+		if c.Block != block {
+			continue
+		}
+		if slices.Contains(s.Preferred, c.Name) {
+			return k
+		}
+		if first < 0 {
+			first = k
+		}
+	}
+	return first
 }
 
-// Interval is the 16th, 50th and 84th percentile of a set of draws.
-type Interval struct {
-	Median float64 `json:"median"`
-	Lo     float64 `json:"lo"`
-	Hi     float64 `json:"hi"`
+// doubts says once what holds at every place.
+func (m *Matching) doubts(radiiFrom string) []string {
+	var out []string
+	for a, x := range m.Compared {
+		if x.NotConverged {
+			line := fmt.Sprintf("%s did not converge: no number that uses it can be trusted", x.Name)
+			if x.Name == radiiFrom {
+				line += ", nor the radii, which are its own"
+			}
+			out = append(out, line)
+		}
+		if x.PoorlyFitted {
+			out = append(out, fmt.Sprintf("%s is poorly fitted: its error does not cover what its model misses, and every tension with it is overstated or misplaced", x.Name))
+		}
+		for _, y := range m.Compared[a+1:] {
+			if x.Block != y.Block && (x.Covers[0] > y.Covers[1]*(1+edge) || y.Covers[0] > x.Covers[1]*(1+edge)) {
+				out = append(out, fmt.Sprintf("%s (%s) and %s (%s) have no radius in common: wherever they are compared, one of them is extrapolated",
+					x.Name, span(x.Covers), y.Name, span(y.Covers)))
+			}
+		}
+	}
+	return out
 }
 
-func interval(values []float64) Interval {
-	p := infer.Percentiles(values, 16, 50, 84)
-	return Interval{Lo: p[0], Median: p[1], Hi: p[2]}
+func span(covers [2]float64) string {
+	if covers[0] == covers[1] {
+		return fmt.Sprintf("%.0f kpc", covers[0])
+	}
+	return fmt.Sprintf("%.0f to %.0f kpc", covers[0], covers[1])
 }
 
-func expInterval(ln []float64) Interval {
-	i := interval(ln)
-	return Interval{Lo: math.Exp(i.Lo), Median: math.Exp(i.Median), Hi: math.Exp(i.Hi)}
+func (s Setup) match(carriers []*carrier, at At) (*Matched, error) {
+	m := &Matched{At: at, Own: at.Radius == 0 && s.RadiiFrom == Own}
+	radius, threshold := at.Radius, 0.0
+	if at.Radius == 0 {
+		var err error
+		if threshold, err = s.Background.threshold(at.Definition); err != nil {
+			return nil, err
+		}
+		if !m.Own {
+			if m.Radius, err = s.referenceRadius(threshold); err != nil {
+				return nil, err
+			}
+			radius = m.Radius.Median
+		}
+	}
+	for k, e := range s.Estimates {
+		mark, err := read(e.Draws, radius, threshold, m.Radius)
+		if err != nil {
+			return nil, fmt.Errorf("%s: %w", e.Name, err)
+		}
+		mark.Name = e.Name
+		m.Marks = append(m.Marks, mark)
+		var ln, common []float64
+		if m.Own {
+			profile := carriers[k].profile()
+			_, ln, _ = ownRadii(profile, threshold)
+			if common, err = carriers[k].commonPart(ln); err != nil {
+				return nil, fmt.Errorf("%s: %w", e.Name, err)
+			}
+		} else if ln, common, err = carriers[k].at(radius); err != nil {
+			return nil, fmt.Errorf("%s: %w", e.Name, err)
+		}
+		m.LnMass, m.Common = append(m.LnMass, ln), append(m.Common, common)
+	}
+	return m, nil
+}
+
+func (s Setup) referenceRadius(threshold float64) (Interval, error) {
+	for _, e := range s.Estimates {
+		if e.Name == s.RadiiFrom {
+			radii, _, outside := ownRadii(e.Draws, threshold)
+			if 2*outside > e.Draws.N {
+				return Interval{}, fmt.Errorf("most draws of %s have no such radius between 1 kpc and 30 Mpc", e.Name)
+			}
+			return interval(radii), nil
+		}
+	}
+	return Interval{}, fmt.Errorf("the estimate %q, whose radii were asked for, is not among those compared", s.RadiiFrom)
+}
+
+// read gives an estimate's mass from its own draws inside radius, or inside each
+// draw's own radius of the mean density threshold when radius is 0.
+func read(d *infer.Draws, radius, threshold float64, around Interval) (Mark, error) {
+	if radius == 0 {
+		radii, ln, outside := ownRadii(d, threshold)
+		r := interval(radii).Median
+		return newMark(r, ln, outside > 0 || extrapolated(d.Covers, r)), nil
+	}
+	ln, ok := d.LnMassesAt(math.Log(radius))
+	if !ok {
+		return Mark{}, fmt.Errorf("%.4g kpc is outside the grid of radii, %.4g to %.4g kpc", radius, d.Radii[0], d.Radii[len(d.Radii)-1])
+	}
+	mark := newMark(radius, ln, extrapolated(d.Covers, radius))
+	if around.Median > 0 {
+		lo, below := d.LnMassesAt(math.Log(around.Lo))
+		hi, above := d.LnMassesAt(math.Log(around.Hi))
+		if below && above {
+			mark.Slope = (interval(hi).Median - interval(lo).Median) / 2
+		}
+	}
+	return mark, nil
+}
+
+func newMark(radius float64, ln []float64, extrapolated bool) Mark {
+	m := Mark{Radius: radius, Mass: expInterval(ln), Extrapolated: extrapolated}
+	m.LnMean, m.LnSD = meanSD(ln)
+	return m
 }
 
 // OwnMass is an estimate's mass inside its own radius of an overdensity.
@@ -107,163 +280,10 @@ func ownRadii(d *infer.Draws, threshold float64) (radii, ln []float64, outside i
 	return radii, ln, outside
 }
 
-// extrapolated allows 1%, so that a mass at one radius is not called
-// extrapolated at that radius for the rounding of its draws.
+// edge allows 1%, so that a mass at one radius is not called extrapolated at
+// that radius for the rounding of its draws.
+const edge = 0.01
+
 func extrapolated(covers [2]float64, r float64) bool {
-	return r < covers[0]*0.99 || r > covers[1]*1.01
-}
-
-// Matching holds the compared estimates' masses at every place.
-type Matching struct {
-	Names    []string // of the estimates
-	Blocks   []string // whose data each is made from
-	Places   []Matched
-	Warnings []string
-}
-
-// Matched holds every estimate's mass at one place.
-type Matched struct {
-	At    At
-	Own   bool // read at each estimate's own radius rather than at one radius
-	Marks []Mark
-	// LnMass[k][i] is ln M of estimate k in joint draw i; Common[k][i] is the part
-	// of it that the shared nuisances of draw i carry, nil when nothing is shared.
-	LnMass, Common [][]float64
-}
-
-// Mark is one estimate's mass at one place, from its own draws alone.
-type Mark struct {
-	Name         string
-	Radius       float64 // kpc; the median where each draw has its own
-	Mass         Interval
-	LnMean, LnSD float64
-	Extrapolated bool
-}
-
-// MatchAll joins the estimates and reads them at every place: at one radius for
-// all, which for an overdensity is the median R_Δ of the estimate named from, or
-// (from Own) each at its own radius, draw by draw.
-func MatchAll(estimates []Estimate, places []At, from string, b Background, stream infer.Stream) (*Matching, error) {
-	if len(estimates) < 2 {
-		return nil, errors.New("a comparison needs two estimates or more")
-	}
-	joint, err := Transport(estimates, stream)
-	if err != nil {
-		return nil, err
-	}
-	m := &Matching{Warnings: joint.Warnings}
-	for _, e := range estimates {
-		m.Names, m.Blocks = append(m.Names, e.Name), append(m.Blocks, e.Block)
-	}
-	for _, at := range places {
-		place, err := match(estimates, joint, at, from, b)
-		if err != nil {
-			return nil, fmt.Errorf("%s: %w", at, err)
-		}
-		m.Places = append(m.Places, *place)
-	}
-	return m, nil
-}
-
-func match(estimates []Estimate, joint *Joint, at At, from string, b Background) (*Matched, error) {
-	m := &Matched{At: at, Own: at.Radius == 0 && from == Own}
-	radius, threshold := at.Radius, 0.0
-	if at.Radius == 0 {
-		var err error
-		if threshold, err = b.threshold(at.Definition); err != nil {
-			return nil, err
-		}
-		if !m.Own {
-			if radius, err = referenceRadius(estimates, from, threshold); err != nil {
-				return nil, err
-			}
-		}
-	}
-	for k, e := range estimates {
-		ln, mark := read(e.Draws, radius, threshold)
-		mark.Name, mark.Mass = e.Name, expInterval(ln)
-		mark.LnMean, mark.LnSD = meanSD(ln)
-		m.Marks = append(m.Marks, mark)
-		shared, _ := read(joint.Profiles[k], radius, threshold)
-		m.LnMass = append(m.LnMass, shared)
-		common, err := commonPart(shared, joint, e)
-		if err != nil {
-			return nil, fmt.Errorf("%s: %w", e.Name, err)
-		}
-		m.Common = append(m.Common, common)
-	}
-	return m, nil
-}
-
-func referenceRadius(estimates []Estimate, from string, threshold float64) (float64, error) {
-	for _, e := range estimates {
-		if e.Name == from {
-			radii, _, outside := ownRadii(e.Draws, threshold)
-			if 2*outside > e.Draws.N {
-				return 0, fmt.Errorf("most draws of %s have no such radius between 1 kpc and 30 Mpc", from)
-			}
-			return interval(radii).Median, nil
-		}
-	}
-	return 0, fmt.Errorf("the estimate %q, whose radii were asked for, is not among those compared", from)
-}
-
-// read gives ln M of every draw inside radius, or inside each draw's own radius
-// of the mean density threshold when radius is 0.
-func read(d *infer.Draws, radius, threshold float64) ([]float64, Mark) {
-	if radius == 0 {
-		radii, ln, outside := ownRadii(d, threshold)
-		r := interval(radii).Median
-		return ln, Mark{Radius: r, Extrapolated: outside > 0 || extrapolated(d.Covers, r)}
-	}
-	ln := make([]float64, d.N)
-	for i := range ln {
-		ln[i] = d.LnMassAt(i, math.Log(radius))
-	}
-	return ln, Mark{Radius: radius, Extrapolated: extrapolated(d.Covers, radius)}
-}
-
-// commonPart is the polynomial regression of ln M on the joint scores of the shared
-// nuisances that the estimate names.
-func commonPart(ln []float64, joint *Joint, e Estimate) ([]float64, error) {
-	var named []int
-	for j, name := range joint.Nuisances {
-		for _, n := range e.Draws.Nuisances {
-			if n.Name == name {
-				named = append(named, j)
-			}
-		}
-	}
-	if len(named) == 0 {
-		return nil, nil
-	}
-	rows := make([][]float64, joint.N)
-	for i := range rows {
-		rows[i] = make([]float64, len(named))
-		for c, j := range named {
-			rows[i][c] = joint.Scores[i][j]
-		}
-	}
-	basis := newPolynomial(rows)
-	fit, err := basis.fit(rows, ln, 1)
-	if err != nil {
-		return nil, err
-	}
-	common, value := make([]float64, joint.N), make([]float64, 1)
-	for i, x := range rows {
-		fit.at(x, value)
-		common[i] = value[0]
-	}
-	return common, nil
-}
-
-func meanSD(x []float64) (mean, sd float64) {
-	for _, v := range x {
-		mean += v
-	}
-	mean /= float64(len(x))
-	for _, v := range x {
-		sd += (v - mean) * (v - mean)
-	}
-	return mean, math.Sqrt(sd / float64(len(x)))
+	return r < covers[0]*(1-edge) || r > covers[1]*(1+edge)
 }

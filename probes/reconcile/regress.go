@@ -2,7 +2,6 @@ package reconcile
 
 import (
 	"errors"
-	"fmt"
 	"math"
 
 	"gonum.org/v1/gonum/mat"
@@ -36,24 +35,19 @@ func moments(rows [][]float64) ([]float64, *mat.SymDense) {
 	return mean, cov
 }
 
-// polynomial is the basis of all monomials in d standardised variables, up to
-// fifth degree for one or two variables and third beyond. A cubic in one
-// variable would miss 3% of the spread that a uniform non-thermal fraction gives
-// to ln M.
+// polynomial is the basis of all monomials up to a degree in d standardised
+// variables.
 type polynomial struct {
 	mean, sd []float64
 	powers   [][]int // one row a monomial: the power of each variable
+	degree   int
 }
 
-func newPolynomial(rows [][]float64) polynomial {
+func newPolynomial(rows [][]float64, degree int) *polynomial {
 	mean, cov := moments(rows)
-	c := polynomial{mean: mean, sd: make([]float64, len(mean))}
+	c := &polynomial{mean: mean, sd: make([]float64, len(mean)), degree: degree}
 	for j := range c.sd {
 		c.sd[j] = math.Sqrt(cov.At(j, j))
-	}
-	degree := 5
-	if len(mean) > 2 {
-		degree = 3
 	}
 	c.enumerate(make([]int, len(mean)), 0, degree)
 	return c
@@ -71,71 +65,70 @@ func (c *polynomial) enumerate(power []int, from, left int) {
 	power[from] = 0
 }
 
-func (c *polynomial) terms(x, out []float64) {
-	for t, power := range c.powers {
-		v := 1.0
-		for j, k := range power {
-			u := (x[j] - c.mean[j]) / c.sd[j]
-			for range k {
-				v *= u
+// design evaluates every monomial at every row.
+func (c *polynomial) design(rows [][]float64) *mat.Dense {
+	out := mat.NewDense(len(rows), len(c.powers), nil)
+	table := make([][]float64, len(c.mean)) // table[j][k] = u_j^k
+	for j := range table {
+		table[j] = make([]float64, c.degree+1)
+		table[j][0] = 1
+	}
+	for i, x := range rows {
+		for j, v := range x {
+			u := (v - c.mean[j]) / c.sd[j]
+			for k := range c.degree {
+				table[j][k+1] = table[j][k] * u
 			}
 		}
-		out[t] = v
-	}
-}
-
-// regression is a fitted polynomial of several responses at once.
-type regression struct {
-	basis *polynomial
-	coef  *mat.Dense // terms × responses
-	term  []float64  // scratch
-}
-
-// fit regresses y (len(rows) × width, row-major) on rows by least squares.
-func (c *polynomial) fit(rows [][]float64, y []float64, width int) (*regression, error) {
-	terms := len(c.powers)
-	normal, right := mat.NewSymDense(terms, nil), mat.NewDense(terms, width, nil)
-	term := make([]float64, terms)
-	gram := make([]float64, terms*terms)
-	raw := right.RawMatrix().Data
-	for i, x := range rows {
-		c.terms(x, term)
-		for a, ta := range term {
-			for b := a; b < terms; b++ {
-				gram[a*terms+b] += ta * term[b]
+		row := out.RawRowView(i)
+		for t, power := range c.powers {
+			v := 1.0
+			for j, k := range power {
+				v *= table[j][k]
 			}
-			row := raw[a*width : (a+1)*width]
-			for w, v := range y[i*width : (i+1)*width] {
-				row[w] += ta * v
+			row[t] = v
+		}
+	}
+	return out
+}
+
+// leastSquares is the factorised normal matrix of a regression.
+type leastSquares struct{ chol mat.Cholesky }
+
+func newLeastSquares(design *mat.Dense) (*leastSquares, error) {
+	n, terms := design.Dims()
+	gram := make([]float64, terms*terms)
+	for i := range n {
+		row := design.RawRowView(i)
+		for a, v := range row {
+			for b := a; b < terms; b++ {
+				gram[a*terms+b] += v * row[b]
 			}
 		}
 	}
 	for a := range terms {
-		for b := a; b < terms; b++ {
-			normal.SetSym(a, b, gram[a*terms+b])
-		}
 		// A ridge far below the data's own weight keeps a near-degenerate
 		// monomial from failing the solution; it moves a coefficient by 1e-10.
-		normal.SetSym(a, a, gram[a*terms+a]*(1+1e-10))
+		gram[a*terms+a] *= 1 + 1e-10
 	}
-	var chol mat.Cholesky
-	if !chol.Factorize(normal) {
+	f := new(leastSquares)
+	if !f.chol.Factorize(mat.NewSymDense(terms, gram)) {
 		return nil, errors.New("the regression of the masses on the shared nuisances is singular")
 	}
-	coef := mat.NewDense(terms, width, nil)
-	if err := chol.SolveTo(coef, right); err != nil {
-		return nil, fmt.Errorf("the regression of the masses on the shared nuisances is nearly singular: %w", err)
-	}
-	return &regression{basis: c, coef: coef, term: term}, nil
+	return f, nil
 }
 
-// at evaluates the fitted responses at x.
-func (r *regression) at(x, out []float64) {
-	r.basis.terms(x, r.term)
-	clear(out)
-	for t, v := range r.term {
-		for w, c := range r.coef.RawRowView(t) {
-			out[w] += v * c
+// solve regresses y on the design the matrix was made from.
+func (f *leastSquares) solve(design *mat.Dense, y []float64) []float64 {
+	_, terms := design.Dims()
+	right, coef := mat.NewVecDense(terms, nil), mat.NewVecDense(terms, nil)
+	sum := right.RawVector().Data
+	for i, v := range y {
+		for t, d := range design.RawRowView(i) {
+			sum[t] += d * v
 		}
 	}
+	// The factorisation passed with the ridge, so its condition is bounded.
+	_ = f.chol.SolveVecTo(coef, right)
+	return coef.RawVector().Data
 }

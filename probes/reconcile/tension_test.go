@@ -5,7 +5,6 @@ import (
 	"math"
 	"math/rand/v2"
 	"os"
-	"sort"
 	"testing"
 
 	"gonum.org/v1/gonum/mat"
@@ -70,55 +69,6 @@ func TestSigmaAgainstReference(t *testing.T) {
 			t.Errorf("Sigma(TwoSided(%g)) = %.15g", sigma, got)
 		}
 	}
-}
-
-// gaussianDraws draws n joint values of ln M with the given means and covariance.
-func gaussianDraws(rng *rand.Rand, n int, mean []float64, cov *mat.SymDense) [][]float64 {
-	var chol mat.Cholesky
-	if !chol.Factorize(cov) {
-		panic("covariance")
-	}
-	root := mat.NewTriDense(len(mean), mat.Lower, nil)
-	chol.LTo(root)
-	out := make([][]float64, len(mean))
-	for k := range out {
-		out[k] = make([]float64, n)
-	}
-	for i := range n {
-		z := mat.NewVecDense(len(mean), normals(rng, len(mean)))
-		var x mat.VecDense
-		x.MulVec(root, z)
-		for k := range mean {
-			out[k][i] = mean[k] + x.AtVec(k)
-		}
-	}
-	return out
-}
-
-func independentDraws(rng *rand.Rand, n int, mean, sd []float64) [][]float64 {
-	cov := mat.NewSymDense(len(mean), nil)
-	for k := range mean {
-		cov.SetSym(k, k, sd[k]*sd[k])
-	}
-	return gaussianDraws(rng, n, mean, cov)
-}
-
-func placeOf(ln [][]float64) *Matched {
-	m := &Matched{At: At{Radius: 1000}, LnMass: ln, Common: make([][]float64, len(ln))}
-	for range ln {
-		m.Marks = append(m.Marks, Mark{Name: "an estimate"})
-	}
-	return m
-}
-
-func pairSigma(t *testing.T, m *Matched) (float64, bool) {
-	t.Helper()
-	p, err := difference(m, 0, 1)
-	if err != nil {
-		t.Fatal(err)
-	}
-	prob, fitted := p.density.LessLikely(0)
-	return Sigma(prob), fitted
 }
 
 // For lognormal masses the probability of Raveri & Doux 2021 in ln M has the
@@ -236,55 +186,6 @@ func TestHighestDensityOfOtherShapes(t *testing.T) {
 	}
 }
 
-// Under agreement p must be uniform. Each set has its own data: the estimates'
-// means scatter about one truth by their errors.
-func TestPIsUniformUnderAgreement(t *testing.T) {
-	const draws = 500
-	for _, k := range []int{2, 3} {
-		sets := 2000
-		if k == 3 && os.Getenv("STEELYARD_SLOW") == "" {
-			sets = 400 // each costs a multidimensional density
-		}
-		sd := []float64{0.1, 0.2, 0.15}[:k]
-		values := make([]float64, sets)
-		for s := range values {
-			rng := rand.New(rand.NewPCG(uint64(s), uint64(k)))
-			mean := make([]float64, k)
-			for j := range mean {
-				mean[j] = sd[j] * rng.NormFloat64()
-			}
-			place := placeOf(independentDraws(rng, draws, mean, sd))
-			var pairs []*pair
-			members := []int{0, 1, 2}[:k]
-			p, err := difference(place, 0, 1)
-			if err != nil {
-				t.Fatal(err)
-			}
-			c, err := agreement(place, members, append(pairs, p), Limits, infer.NewStream("agreement"))
-			if err != nil {
-				t.Fatal(err)
-			}
-			values[s] = c.P
-		}
-		checkUniform(t, values)
-	}
-}
-
-// checkUniform holds the Kolmogorov–Smirnov distance below 1.95/√n, which one
-// set in a thousand exceeds by chance, plus what 500 draws blur: 1/√500 of a
-// standard deviation in the mean, 0.01 in p.
-func checkUniform(t *testing.T, p []float64) {
-	t.Helper()
-	sort.Float64s(p)
-	distance := 0.0
-	for i, v := range p {
-		distance = math.Max(distance, math.Abs(v-(float64(i)+0.5)/float64(len(p))))
-	}
-	if limit := 1.95/math.Sqrt(float64(len(p))) + 0.01; distance > limit {
-		t.Errorf("p is not uniform: Kolmogorov–Smirnov distance %.4f above %.4f", distance, limit)
-	}
-}
-
 // Normal estimates have a closed agreement: χ² with K − 1 degrees of freedom.
 func TestAgreementAgainstReference(t *testing.T) {
 	for _, row := range readReference(t).Agreement {
@@ -309,10 +210,12 @@ func TestAgreementAgainstReference(t *testing.T) {
 		for k := range members {
 			members[k] = k
 		}
-		chi2, err := chiSquare(place, members)
+		mean, cov2 := moments(transposed(place.LnMass))
+		best, err := BestLinear(mean, cov2)
 		if err != nil {
 			t.Fatal(err)
 		}
+		chi2 := best.Chi2
 		// 40000 draws know a covariance to 0.7%, and χ² with it.
 		if math.Abs(chi2/row.Chi2-1) > 0.03 {
 			t.Errorf("%s: χ² = %.4f, want %.4f", row.Name, chi2, row.Chi2)
@@ -320,7 +223,7 @@ func TestAgreementAgainstReference(t *testing.T) {
 		if !diagonal {
 			continue // correlations reach the density by shared nuisances only
 		}
-		p, _ := contrastsLessLikely(place, members, infer.NewStream("x"))
+		p, _ := lessLikely(place, members)
 		if got := Sigma(p); math.Abs(got-row.TwoSided) > 0.06 {
 			t.Errorf("%s: %.3fσ, want %.3fσ", row.Name, got, row.TwoSided)
 		}
@@ -333,10 +236,39 @@ func TestUninformativeEstimateChangesNothing(t *testing.T) {
 	rng := rand.New(rand.NewPCG(10, 11))
 	ln := independentDraws(rng, 8000, []float64{0, 0.4, 0}, []float64{0.1, 0.12, 20})
 	two, _ := pairSigma(t, placeOf(ln[:2]))
-	p, _ := contrastsLessLikely(placeOf(ln), []int{0, 1, 2}, infer.NewStream("y"))
+	p, _ := lessLikely(placeOf(ln), []int{0, 1, 2})
 	// With one more degree of freedom that carries no χ²: p = exp(−χ²/2).
 	if want := Sigma(math.Exp(-two * two / 2)); math.Abs(Sigma(p)-want) > 0.06 {
 		t.Errorf("%.3fσ, want %.3fσ", Sigma(p), want)
+	}
+}
+
+// The evidence of one mass over two, each flat over W = ln 10⁴, is W times the
+// normal density of their difference at zero; over three, W² times that of two
+// differences.
+func TestEvidenceOfOneMass(t *testing.T) {
+	rng := rand.New(rand.NewPCG(12, 13))
+	mean, sd := []float64{0, 0.3, 0.1}, []float64{0.1, 0.15, 0.2}
+	for _, k := range []int{2, 3} {
+		place := placeOf(independentDraws(rng, 20000, mean[:k], sd[:k]))
+		m := matchingOf(place)
+		r, err := Compare(m, Limits, infer.NewStream("evidence"))
+		if err != nil {
+			t.Fatal(err)
+		}
+		// ∫ Π N(u; x_k, σ_k²) du = N-dimensional normal at its best common value.
+		best, err := BestLinear(mean[:k], covariance(sd[:k], nil))
+		if err != nil {
+			t.Fatal(err)
+		}
+		want := float64(k-1)*math.Log(math.Log(1e4)) - best.Chi2/2 + math.Log(best.SD) - float64(k-1)/2*math.Log(2*math.Pi)
+		for _, s := range sd[:k] {
+			want -= math.Log(s)
+		}
+		// 20000 draws know a mean to 0.7% of its error, χ²/2 to about 0.02.
+		if got := r.Consistency[0].LnBayes; math.Abs(got-want) > 0.06 {
+			t.Errorf("%d estimates: ln B = %.3f, want %.3f", k, got, want)
+		}
 	}
 }
 
@@ -346,4 +278,19 @@ func TestVerdictWords(t *testing.T) {
 			t.Errorf("Verdict(%g) = %q, want %q", sigma, got, want)
 		}
 	}
+}
+
+func lessLikely(place *Matched, members []int) (float64, bool) {
+	residual, common := parts(place, members)
+	return newContrastDensity(logDensities(residual), common).lessLikely(residual, common, effort, infer.NewStream("contrasts"))
+}
+
+func transposed(x [][]float64) [][]float64 {
+	rows := make([][]float64, len(x[0]))
+	for i := range rows {
+		for _, column := range x {
+			rows[i] = append(rows[i], column[i])
+		}
+	}
+	return rows
 }

@@ -1,97 +1,14 @@
 package reconcile
 
 import (
+	"context"
 	"math"
 	"math/rand/v2"
+	"strings"
 	"testing"
 
 	"steelyard/probes/infer"
 )
-
-// model is an estimate whose posterior is known: ln M = level + effect(s) +
-// noise, its data adding to the prior N(0,1) of each score s a measurement of
-// (weights·s) with the given error (0 for none).
-type model struct {
-	names   []string
-	level   float64
-	noise   float64
-	effect  func(s []float64) float64
-	weights []float64
-	value   float64
-	err     float64
-}
-
-func (m model) logLikelihood(s []float64) float64 {
-	if m.err == 0 {
-		return 0
-	}
-	sum := 0.0
-	for j, w := range m.weights {
-		sum += w * s[j]
-	}
-	u := (sum - m.value) / m.err
-	return -u * u / 2
-}
-
-// draws samples the posterior of the estimate alone by rejection.
-func (m model) draws(rng *rand.Rand, n int) *infer.Draws {
-	d := &infer.Draws{N: n, Radii: []float64{500, 1000, 2000}, Covers: [2]float64{500, 2000}}
-	columns := make([][]float64, len(m.names))
-	for d.LnMass == nil || len(d.LnMass) < 3*n {
-		s := normals(rng, len(m.names))
-		if rng.Float64() > math.Exp(m.logLikelihood(s)) {
-			continue
-		}
-		for j := range s {
-			columns[j] = append(columns[j], s[j])
-		}
-		ln := m.level + m.effect(s) + m.noise*rng.NormFloat64()
-		d.LnMass = append(d.LnMass, ln-0.5, ln, ln+0.5)
-	}
-	for j, name := range m.names {
-		d.Nuisances = append(d.Nuisances, infer.Parameter{Name: name, Values: columns[j]})
-	}
-	return d
-}
-
-// truth is the mean and covariance of both ln M with the nuisances shared, by
-// weighting a million joint draws of the prior: brute force.
-func truth(models []model, all []string) (mean, sd []float64, correlation float64) {
-	rng := rand.New(rand.NewPCG(99, 1))
-	var w, wx, wy, wxx, wyy, wxy float64
-	for range 1_000_000 {
-		s := normals(rng, len(all))
-		ln, weight := make([]float64, 2), 0.0
-		for k, m := range models {
-			own := make([]float64, len(m.names))
-			for j, name := range m.names {
-				for i, a := range all {
-					if a == name {
-						own[j] = s[i]
-					}
-				}
-			}
-			weight += m.logLikelihood(own)
-			ln[k] = m.level + m.effect(own)
-		}
-		p := math.Exp(weight)
-		w, wx, wy = w+p, wx+p*ln[0], wy+p*ln[1]
-		wxx, wyy, wxy = wxx+p*ln[0]*ln[0], wyy+p*ln[1]*ln[1], wxy+p*ln[0]*ln[1]
-	}
-	mx, my := wx/w, wy/w
-	vx, vy := wxx/w-mx*mx+models[0].noise*models[0].noise, wyy/w-my*my+models[1].noise*models[1].noise
-	return []float64{mx, my}, []float64{math.Sqrt(vx), math.Sqrt(vy)}, (wxy/w - mx*my) / math.Sqrt(vx*vy)
-}
-
-func linear(a ...float64) func([]float64) float64 {
-	return func(s []float64) float64 {
-		sum := 0.0
-		for j, c := range a {
-			sum += c * s[j]
-		}
-		return sum
-	}
-}
 
 // The five cases of shared nuisances. The last is a non-thermal pressure
 // fraction, uniform from 0 to 0.4, of which both masses are 1/(1 − f): there the
@@ -131,15 +48,15 @@ func TestSharedNuisancesAgainstBruteForce(t *testing.T) {
 			{Name: "one", Block: "one", Draws: c.models[0].draws(rng, n)},
 			{Name: "two", Block: "two", Draws: c.models[1].draws(rng, n)},
 		}
-		joint, err := Transport(estimates, infer.NewStream(c.name))
+		joint, err := Share(context.Background(), estimates, infer.NewStream(c.name))
 		if err != nil {
 			t.Fatalf("%s: %v", c.name, err)
 		}
-		got := make([][]float64, 2)
-		for k, d := range joint.Profiles {
-			for i := range d.N {
-				got[k] = append(got[k], d.LnMass[i*3+1])
-			}
+		if joint.Sampled {
+			t.Errorf("%s: nothing here asks for sampling: %q", c.name, joint.Warnings)
+		}
+		got := readAt(t, joint, estimates, 1000)
+		for k := range got {
 			m, s := meanSD(got[k])
 			// Means and spreads within 2% of the spread; 20000 draws know a mean to
 			// 0.7% of it and a spread to 0.5%.
@@ -167,10 +84,7 @@ func TestSharedErrorCancels(t *testing.T) {
 	low := both
 	low.level = -0.25
 	estimates := []Estimate{{Name: "one", Block: "one", Draws: both.draws(rng, 4000)}, {Name: "two", Block: "two", Draws: low.draws(rng, 4000)}}
-	m, err := MatchAll(estimates, []At{{Radius: 1000}}, "", Background{}, infer.NewStream("cancel"))
-	if err != nil {
-		t.Fatal(err)
-	}
+	m := matchEstimates(t, Setup{Estimates: estimates, Places: []At{{Radius: 1000}}})
 	r, err := Compare(m, Limits, infer.NewStream("cancel"))
 	if err != nil {
 		t.Fatal(err)
@@ -184,64 +98,101 @@ func TestSharedErrorCancels(t *testing.T) {
 	}
 }
 
-// A posterior that is skew in the score is said to be.
-func TestSkewNuisanceIsDoubted(t *testing.T) {
-	rng := rand.New(rand.NewPCG(7, 7))
-	skew := model{names: []string{"a"}, noise: 0.05, effect: linear(0.1)}
-	d := skew.draws(rng, 4000)
-	for i, s := range d.Nuisances[0].Values {
-		d.Nuisances[0].Values[i] = s + 0.4*(s*s-1)
+// readAt is ln M(<r) of every estimate in the joint draws.
+func readAt(t *testing.T, joint *Joint, estimates []Estimate, r float64) [][]float64 {
+	t.Helper()
+	var out [][]float64
+	for k, e := range estimates {
+		c, err := joint.newCarrier(k, e)
+		if err != nil {
+			t.Fatal(err)
+		}
+		ln, _, err := c.at(r)
+		if err != nil {
+			t.Fatal(err)
+		}
+		out = append(out, ln)
 	}
-	joint, err := Transport([]Estimate{{Name: "skewed", Draws: d}, {Name: "plain", Draws: skew.draws(rng, 4000)}}, infer.NewStream("s"))
-	if err != nil {
-		t.Fatal(err)
-	}
-	if len(joint.Warnings) != 1 {
-		t.Errorf("warnings: %q", joint.Warnings)
-	}
+	return out
 }
 
-// A nuisance that only one estimate names changes nothing of it.
+// A nuisance that only one estimate names changes nothing of it, and is said.
 func TestUnsharedNuisanceIsLeftAlone(t *testing.T) {
 	rng := rand.New(rand.NewPCG(8, 8))
 	a := model{names: []string{"a"}, noise: 0.05, effect: linear(0.1)}.draws(rng, 1000)
 	b := model{names: []string{"b"}, noise: 0.05, effect: linear(0.1)}.draws(rng, 1000)
-	joint, err := Transport([]Estimate{{Name: "a", Draws: a}, {Name: "b", Draws: b}}, infer.NewStream("s"))
+	estimates := []Estimate{{Name: "a", Draws: a}, {Name: "b", Draws: b}}
+	joint, err := Share(context.Background(), estimates, infer.NewStream("s"))
 	if err != nil {
 		t.Fatal(err)
 	}
 	if joint.Scores != nil || len(joint.Nuisances) > 0 {
 		t.Error("a nuisance named once was shared")
 	}
-	m, s := meanSD(a.LnMass)
-	if mj, sj := meanSD(joint.Profiles[0].LnMass); math.Abs(m-mj) > 1e-12 || math.Abs(s-sj) > 1e-12 {
+	if len(joint.Warnings) != 2 || !strings.Contains(joint.Warnings[0], "nuisance.a is named by one") {
+		t.Errorf("warnings: %q", joint.Warnings)
+	}
+	stored, _ := a.LnMassesAt(math.Log(1000))
+	m, s := meanSD(stored)
+	if mj, sj := meanSD(readAt(t, joint, estimates, 1000)[0]); math.Abs(m-mj) > 1e-12 || math.Abs(s-sj) > 1e-12 {
 		t.Error("the draws were changed")
 	}
 }
 
-// Matchings are stored between two nodes.
-func TestMatchingRoundTrip(t *testing.T) {
+// A nuisance whose prior and data disagree is said to: a measurement 3.2 ± 0.5
+// of a unit normal lies 3.2/√1.25 = 2.86σ from it.
+func TestPriorAgainstData(t *testing.T) {
+	rng := rand.New(rand.NewPCG(4, 8))
+	far := model{names: []string{"a"}, noise: 0.05, effect: linear(0.1), weights: []float64{1}, value: 3.2, err: 0.5}
+	loose := model{names: []string{"a"}, noise: 0.05, effect: linear(0.1)}
+	joint, err := Share(context.Background(), []Estimate{{Name: "far", Draws: far.draws(rng, 4000)}, {Name: "loose", Draws: loose.draws(rng, 4000)}}, infer.NewStream("s"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if want := "far: its data and the prior of nuisance.a disagree by 2.9σ"; len(joint.Warnings) == 0 || joint.Warnings[0] != want {
+		t.Errorf("warnings %q, want %q first", joint.Warnings, want)
+	}
+}
+
+// What is handed from node to node is stored whole.
+func TestJointAndMatchingRoundTrip(t *testing.T) {
 	rng := rand.New(rand.NewPCG(9, 9))
 	a := model{names: []string{"a"}, noise: 0.05, effect: linear(0.1)}
-	m, err := MatchAll([]Estimate{{Name: "one", Block: "x", Draws: a.draws(rng, 50)}, {Name: "two", Block: "y", Draws: a.draws(rng, 50)}}, []At{{Radius: 1000}, {Radius: 700}}, "", Background{}, infer.NewStream("r"))
+	s := Setup{
+		Estimates: []Estimate{{Name: "one", Block: "x", Draws: a.draws(rng, 60)}, {Name: "two", Block: "y", Draws: a.draws(rng, 60)}},
+		Places:    []At{{Radius: 1000}, {Radius: 700}},
+	}
+	joint, err := Share(context.Background(), s.Estimates, infer.NewStream("r"))
 	if err != nil {
 		t.Fatal(err)
 	}
-	b, err := m.MarshalBinary()
+	m := matchEstimates(t, s)
+	m.Combined = []CombinedProfile{{Scattered: true, Own: []OwnMass{{Radius: Interval{1, 2, 3}}}}}
+	roundTrip(t, joint, new(Joint))
+	roundTrip(t, m, new(Matching))
+}
+
+type stored interface {
+	MarshalBinary() ([]byte, error)
+	UnmarshalBinary([]byte) error
+}
+
+func roundTrip(t *testing.T, v, back stored) {
+	t.Helper()
+	b, err := v.MarshalBinary()
 	if err != nil {
 		t.Fatal(err)
 	}
-	var back Matching
 	if err := back.UnmarshalBinary(b); err != nil {
 		t.Fatal(err)
 	}
 	again, err := back.MarshalBinary()
 	if err != nil || string(again) != string(b) {
-		t.Errorf("a matching does not survive storage (%v)", err)
+		t.Errorf("%T does not survive storage (%v)", v, err)
 	}
 	for n := range b {
 		if back.UnmarshalBinary(b[:n]) == nil {
-			t.Fatalf("%d of %d bytes were accepted", n, len(b))
+			t.Fatalf("%T: %d of %d bytes were accepted", v, n, len(b))
 		}
 	}
 }
