@@ -168,12 +168,12 @@ func (f *fit) typicalScatter(sample *infer.Sample) float64 {
 	return infer.Percentiles(drawn, 50)[0]
 }
 
-// check prints the fit with the quoted errors alone.
+// check prints the fit with the quoted errors alone; the words about a poor one
+// are among the warnings.
 func (b bestFit) check() infer.Check {
 	c := infer.Check{Name: "chi2 with the quoted errors alone", Statistic: b.chi2, PValue: -1, Passed: true}
 	if b.dof > 0 {
 		c.PValue, c.Passed = b.pValue, b.pValue >= poorFit
-		c.Note = fmt.Sprintf("χ² = %.1f for %d degrees of freedom without any scatter of spectral temperatures", b.chi2, b.dof)
 	}
 	return c
 }

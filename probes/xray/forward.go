@@ -157,8 +157,7 @@ func (w *forwardFit) finish(sample *infer.Sample, m *slopes, quoted, best bestFi
 			"temperature: " + w.form.words,
 		}, w.assumes()...),
 		Checks: []infer.Check{quoted.check(), {
-			Name: "mass falls with radius", Statistic: excluded, PValue: -1, Passed: excluded < 0.5,
-			Note: fmt.Sprintf("%.1f%% of the draws had a mass that falls with radius inside the data and were left out", 100*excluded),
+			Name: "share of draws whose mass falls with radius", Statistic: excluded, PValue: -1, Passed: excluded < 0.5,
 		}},
 		Warnings: w.warnings(quoted),
 	}

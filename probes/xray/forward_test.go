@@ -134,7 +134,7 @@ func TestForwardFindsTheHalo(t *testing.T) {
 	if all := strings.Join(d.Assumes, "\n"); !strings.Contains(all, "temperature: eq. 6 of Vikhlinin et al. 2006 with a = 0, b = 2, acool = 1.9") {
 		t.Errorf("the temperature's form is not told: %q", d.Assumes)
 	}
-	if len(d.Checks) != 2 || d.Checks[1].Name != "mass falls with radius" {
+	if len(d.Checks) != 2 || d.Checks[1].Name != "share of draws whose mass falls with radius" {
 		t.Errorf("checks %v", d.Checks)
 	}
 }
