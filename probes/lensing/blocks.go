@@ -104,4 +104,26 @@ var blocks = []method.Block{
 			},
 		},
 	},
+	{
+		Name: "images",
+		Doc:  "Families of multiple images: one row an image, those of one source at one redshift.",
+		Columns: []method.Column{
+			{Name: "source", Text: true, Required: true, Doc: "name of the source, which its images share"},
+			{Name: "ra", Unit: "rad", Required: true, Doc: "right ascension, ICRS"},
+			{Name: "dec", Unit: "rad", Required: true, Doc: "declination, ICRS"},
+			{Name: "error", Unit: "rad", Required: true, Doc: "error of the place in each coordinate, arcsec"},
+			{Name: "redshift", Required: true, Doc: "redshift of the source"},
+		},
+	},
+	{
+		Name: "components",
+		Doc:  "Places of lenses beside the halo, galaxies above all: one row a truncated isothermal sphere, elliptical when its shape is given. With luminosities, one dispersion holds for all, σ ∝ L^¼.",
+		Columns: []method.Column{
+			{Name: "ra", Unit: "rad", Required: true, Doc: "right ascension, ICRS"},
+			{Name: "dec", Unit: "rad", Required: true, Doc: "declination, ICRS"},
+			{Name: "luminosity", Doc: "luminosity, in any unit"},
+			{Name: "ellipticity", Doc: "ellipticity ε of its potential, whose axes are in the ratio √((1−ε)/(1+ε))"},
+			{Name: "position_angle", Unit: "rad", Doc: "direction of its major axis, from north through east"},
+		},
+	},
 }

@@ -18,6 +18,7 @@ type lensFit struct {
 	elongation estimate.Ref
 	distance   estimate.Ref
 	parts      []part
+	images     *imagesPart // the one of parts that needs a search; nil for none
 }
 
 // lens is what bends the light, at one point of parameter space.
@@ -52,7 +53,52 @@ func newLensFit(t *estimate.Task) (*lensFit, error) {
 // at is the lens at theta; not ok where there is none.
 func (f *lensFit) at(theta []float64) (lens, bool) {
 	h, ok := f.halo.at(theta)
-	return lens{h, theta, f.elongation.Of(theta), f.distance.Of(theta)}, ok
+	l := lens{h, theta, f.elongation.Of(theta), f.distance.Of(theta)}
+	return l, ok && l.elongation > 0 && l.distance > 0
+}
+
+// likelihood returns the log likelihood of all parts together, with scratch
+// space of its own.
+func (f *lensFit) likelihood() func(theta []float64) float64 {
+	parts := make([]func(lens) float64, len(f.parts))
+	for i, p := range f.parts {
+		parts[i] = p.likelihood()
+	}
+	return func(theta []float64) float64 {
+		l, ok := f.at(theta)
+		if !ok {
+			return math.Inf(-1)
+		}
+		sum := 0.0
+		for _, p := range parts {
+			sum += p(l)
+		}
+		return sum
+	}
+}
+
+// draw draws the parameters: from the prior down, or around what a search among
+// the lenses of the images has found.
+func (f *lensFit) draw(ctx context.Context) (*infer.Sample, error) {
+	if f.images == nil {
+		return infer.DrawPosterior(ctx, infer.Problem{Free: f.parameters.Free, Likelihood: f.likelihood}, f.task.Sampling)
+	}
+	s, err := f.images.search(ctx)
+	if err != nil {
+		return nil, err
+	}
+	return f.drawAround(ctx, s)
+}
+
+// lnMass fills out with ln M(<r) at theta, components included.
+func (f *lensFit) lnMass(theta, radii, out []float64) error {
+	if err := f.halo.lnMass(theta, radii, out); err != nil {
+		return err
+	}
+	if f.images != nil {
+		f.images.addComponents(theta, radii, out)
+	}
+	return nil
 }
 
 // run draws the halo.
@@ -60,27 +106,7 @@ func (f *lensFit) run(ctx context.Context) (*infer.Draws, error) {
 	if len(f.parameters.Free) == 0 {
 		return nil, f.task.Errorf("every parameter is an exact number, so there is nothing to fit")
 	}
-	problem := infer.Problem{
-		Free: f.parameters.Free,
-		Likelihood: func() func([]float64) float64 {
-			parts := make([]func(lens) float64, len(f.parts))
-			for i, p := range f.parts {
-				parts[i] = p.likelihood()
-			}
-			return func(theta []float64) float64 {
-				l, ok := f.at(theta)
-				if !ok || !(l.elongation > 0 && l.distance > 0) {
-					return math.Inf(-1)
-				}
-				sum := 0.0
-				for _, p := range parts {
-					sum += p(l)
-				}
-				return sum
-			}
-		},
-	}
-	sample, err := infer.DrawPosterior(ctx, problem, f.task.Sampling)
+	sample, err := f.draw(ctx)
 	if err != nil {
 		return nil, f.task.Errorf("%w", err)
 	}
@@ -89,7 +115,7 @@ func (f *lensFit) run(ctx context.Context) (*infer.Draws, error) {
 		return nil, f.task.Errorf("the best fit has no halo")
 	}
 	fit := estimate.Fit{
-		Sample: sample, Parameters: &f.parameters, LnMass: f.halo.lnMass, Derived: f.halo.derived(),
+		Sample: sample, Parameters: &f.parameters, LnMass: f.lnMass, Derived: f.halo.derived(),
 		Covers:  [2]float64{math.Inf(1), 0},
 		Assumes: append(f.halo.assumes(f.task), assumed(f.task, f.shared()...)...),
 	}

@@ -2,7 +2,8 @@
 //
 // Start at Probe, which declares the data blocks, the reductions and the
 // methods. A shape catalogue (galaxies.go) or a published profile
-// (published.go) becomes a Profile; a method fits a halo to it.
+// (published.go) becomes a Profile, a list of multiple images becomes families
+// (images.go); a method fits a halo to them.
 //
 // Conventions, held everywhere in the package:
 //
@@ -25,6 +26,6 @@ var Probe = estimate.Probe{
 	Name:       "lensing",
 	Doc:        "Weighs an object by the shapes and places of the galaxies behind it.",
 	Blocks:     blocks,
-	Reductions: []estimate.Reduction{profileReduction},
-	Methods:    []estimate.Method{tangentialShear, aperture, einsteinRadiusMethod, combined},
+	Reductions: []estimate.Reduction{profileReduction, imagesReduction},
+	Methods:    []estimate.Method{tangentialShear, aperture, einsteinRadiusMethod, imagePositions, combined},
 }
