@@ -40,15 +40,41 @@ func (s *Store) Check(ctx context.Context, repair bool) (*Checked, error) {
 			return nil, err
 		}
 	}
+	lost := map[Digest]bool{}
 	for _, d := range slices.SortedFunc(maps.Keys(c.wanting), func(a, b Digest) int { return bytes.Compare(a[:], b[:]) }) {
 		if _, err := s.Output(d); err != nil { // and was not stored since we looked
 			c.problem("the output of %s (%s) cannot be used: %v", c.wanting[d], d.Short(), err)
+			lost[d] = true
 		}
 	}
-	if repair && s.damaged.Load() {
-		return &c.Checked, s.update(func(*bolt.Tx) error { return nil })
+	if repair && (s.damaged.Load() || len(lost) > 0) {
+		return &c.Checked, s.update(func(tx *bolt.Tx) error { return removeLost(tx, lost) })
 	}
 	return &c.Checked, nil
+}
+
+// removeLost removes the records and weighings whose outputs are lost.
+func removeLost(tx *bolt.Tx, lost map[Digest]bool) error {
+	if len(lost) == 0 {
+		return nil
+	}
+	records := deleteWhere(tx, recordBucket, func(key, sealed []byte) bool {
+		value, err := unseal(recordBucket, key, sealed)
+		if err != nil {
+			return false
+		}
+		r, err := DecodeRecord(value)
+		return err == nil && lost[r.Output]
+	})
+	weighings := deleteWhere(tx, historyBucket, func(key, sealed []byte) bool {
+		value, err := unseal(historyBucket, key, sealed)
+		if err != nil {
+			return false
+		}
+		w, err := decodeWeighing(key, value)
+		return err == nil && lost[w.Body]
+	})
+	return errors.Join(records, weighings)
 }
 
 type checker struct {

@@ -312,3 +312,38 @@ func TestUpkeepOfDamagedStore(t *testing.T) {
 		})
 	}
 }
+
+// Repairing removes records and weighings whose outputs are lost, so that the
+// next check has nothing to say; what is whole stays.
+func TestRepairRemovesWhatIsLost(t *testing.T) {
+	dir := t.TempDir()
+	s := open(t, dir, Options{})
+	r, output := entry(0)
+	s.Put(r, bytes.Repeat(output, 1+largeOutput/len(output)))
+	s.Put(entry(1))
+	for i := range 2 {
+		if _, err := s.Remember(Weighing{Recipe: "r"}, bytes.Repeat([]byte{byte(i)}, largeOutput+1)); err != nil {
+			t.Fatal(err)
+		}
+	}
+	history, err := s.History("r")
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, lost := range []Digest{r.Output, history[0].Body} {
+		if err := os.Remove(s.outputPath(lost)); err != nil {
+			t.Fatal(err)
+		}
+	}
+	for _, repair := range []bool{false, true} {
+		if c, err := s.Check(t.Context(), repair); err != nil || len(c.Problems) != 2 {
+			t.Fatalf("with repair %t: %+v, %v", repair, c, err)
+		}
+	}
+	if c, err := s.Check(t.Context(), false); err != nil || len(c.Problems) != 0 || c.Records != 1 || c.Weighings != 1 {
+		t.Errorf("afterwards: %+v, %v", c, err)
+	}
+	if left, err := s.History("r"); err != nil || len(left) != 1 || left[0].Number != 2 {
+		t.Errorf("history: %+v, %v", left, err)
+	}
+}

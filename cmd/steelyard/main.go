@@ -10,11 +10,14 @@ import (
 )
 
 func main() {
-	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
-	defer stop()
+	ctx, interrupt := context.WithCancel(context.Background())
+	signals := make(chan os.Signal, 2)
+	signal.Notify(signals, os.Interrupt, syscall.SIGTERM)
 	go func() {
-		<-ctx.Done()
-		stop() // a second interrupt ends the program at once
+		<-signals
+		interrupt()
+		<-signals
+		os.Exit(exitFailed) // a second interrupt ends the program at once
 	}()
 	os.Exit(run(ctx, os.Args[1:], os.Stdout, os.Stderr))
 }

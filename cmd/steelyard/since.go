@@ -135,7 +135,7 @@ func (o *options) listWeighings(past []cache.Weighing) error {
 	for _, w := range past {
 		var err error
 		if o.json {
-			err = json.NewEncoder(o.out).Encode(listed{"steelyard/past/1", history.MarkOf(w)})
+			err = json.NewEncoder(o.out).Encode(listed{"steelyard/weighing-mark/1", history.MarkOf(w)})
 		} else {
 			_, err = fmt.Fprintf(o.out, "%4d  %s  by %s\n", w.Number, history.Stamp(w.Finished.In(time.Local)), w.Program)
 		}

@@ -200,7 +200,7 @@ func TestOneFailureLetsTheRestFinish(t *testing.T) {
 }
 
 func TestExitStatuses(t *testing.T) {
-	recipe, store := curlew(t), t.TempDir()
+	recipe, store := dunlin(t), t.TempDir()
 	missing := filepath.Join(t.TempDir(), "missing.hcl")
 	broken := filepath.Join(t.TempDir(), "broken.hcl")
 	if err := os.WriteFile(broken, []byte("object \"A\" {\n  redshift = -1\n}\n"), 0o644); err != nil {
@@ -225,6 +225,33 @@ func TestExitStatuses(t *testing.T) {
 		{[]string{"methods", "tangential-shear"}, exitDone, ""},
 		{[]string{"methods"}, exitDone, ""},
 		{[]string{"inspect", recipe}, exitDone, ""},
+		{[]string{"trace", recipe, "lensing.shear.nfw"}, exitDone, ""},
+		{[]string{"trace", recipe, "lensing.shear.nwf"}, exitWrong, "did you mean lensing.shear.nfw?"},
+		{[]string{"trace", recipe, "nonsense"}, exitWrong, "steelyard inspect lists the nodes"},
+		{[]string{"trace", recipe, "reconcile", "--json", "--prov"}, exitWrong, "leave --json away"},
+		{[]string{"trace", recipe, "reconcile", "--weighing", "7"}, exitWrong, "there is no weighing 7"},
+		{[]string{"trace", recipe}, exitWrong, "arg"},
+		{[]string{"trace", missing, "reconcile"}, exitFailed, "no weighing of " + missing},
+		{[]string{"trace", recipe + "l", "reconcile"}, exitFailed, "did you mean " + recipe + "?"},
+		{[]string{"since", recipe}, exitFailed, "is the first on record"},
+		{[]string{"since", recipe, "--list"}, exitDone, ""},
+		{[]string{"since", recipe, "--list", "--from", "1"}, exitWrong, "leave --from"},
+		{[]string{"since", recipe, "--from", "soon"}, exitWrong, "--from soon"},
+		{[]string{"since", recipe, "--to", "0"}, exitWrong, "--to 0: there is no weighing 0"},
+		{[]string{"cache"}, exitDone, ""},
+		{[]string{"cache", "sice"}, exitWrong, "unknown command"},
+		{[]string{"cache", "size"}, exitDone, ""},
+		{[]string{"cache", "size", "now"}, exitWrong, "unknown command"},
+		{[]string{"cache", "check"}, exitDone, ""},
+		{[]string{"cache", "check", recipe}, exitWrong, "--recompute"},
+		{[]string{"cache", "check", "--recompute", "2"}, exitWrong, "needs recipes"},
+		{[]string{"cache", "check", "--recompute", "0", recipe}, exitWrong, "at least one"},
+		{[]string{"cache", "trim"}, exitWrong, "say what to remove"},
+		{[]string{"cache", "trim", "--unused-for", "3y"}, exitWrong, "36h, 90d or 12w"},
+		{[]string{"cache", "trim", "--down-to", "-1GB"}, exitWrong, "500MB or 2GB"},
+		{[]string{"cache", "trim", recipe + "x"}, exitWrong, "did you mean " + recipe + "?"},
+		{[]string{"cache", "absorb"}, exitWrong, "arg"},
+		{[]string{"cache", "absorb", missing}, exitFailed, "there is no store in"},
 	} {
 		status, _, log := steelyard(t, append(c.args, "--cache", store)...)
 		if status != c.want || !strings.Contains(log, c.say) {
@@ -235,7 +262,7 @@ func TestExitStatuses(t *testing.T) {
 
 // Inspect stores and computes nothing.
 func TestInspectLeavesTheStoreAlone(t *testing.T) {
-	recipe, store := curlew(t), t.TempDir()
+	recipe, store := dunlin(t), t.TempDir()
 	out, _ := succeed(t, "inspect", "--cache", store, recipe)
 	if !strings.Contains(out, "to compute") {
 		t.Errorf("nothing is to compute:\n%s", out)
@@ -254,35 +281,78 @@ func TestInspectLeavesTheStoreAlone(t *testing.T) {
 	if out, _ = succeed(t, "inspect", "--cache", store, recipe); strings.Contains(out, "to compute") {
 		t.Errorf("after weighing there is still something to compute:\n%s", out)
 	}
-	edit(t, recipe, "seed  = 7", "seed  = 8")
-	if out, _ = succeed(t, "inspect", "--cache", store, recipe); !strings.Contains(out, "seed: 7 → 8") {
+	edit(t, recipe, "draws = 200", "draws = 210")
+	if out, _ = succeed(t, "inspect", "--cache", store, recipe); !strings.Contains(out, "draws: 200 → 210") {
 		t.Errorf("the reason is not given:\n%s", out)
 	}
 }
 
-// Several recipes share a store; with --json each prints one line.
+// Several recipes share what they have in common; with --json each prints one
+// line, in order.
 func TestSeveralRecipes(t *testing.T) {
-	recipe, store := curlew(t), t.TempDir()
-	out, _ := succeed(t, "weigh", "--json", "--cache", store, recipe, recipe)
+	first, second, store := dunlin(t), dunlin(t), t.TempDir()
+	edit(t, second, "Dunlin", "Sanderling")
+	edit(t, second, "normal(0.0, 0.02)", "normal(0.0, 0.03)")
+	broken := filepath.Join(t.TempDir(), "broken.hcl")
+	if err := os.WriteFile(broken, []byte("object {}\n"), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	status, out, log := steelyard(t, "weigh", "--json", "--cache", store, first, broken, second)
+	if status != exitWrong || !strings.Contains(log, "broken.hcl was not weighed") {
+		t.Errorf("exit status %d: %s", status, log)
+	}
 	lines := strings.Split(strings.TrimSpace(out), "\n")
 	if len(lines) != 2 {
 		t.Fatalf("%d lines", len(lines))
 	}
-	var second weighing.Weighing
-	if err := json.Unmarshal([]byte(lines[1]), &second); err != nil {
-		t.Fatal(err)
-	}
-	if again := computed(&second); len(again) > 0 {
-		t.Errorf("the second time computed %v", again)
+	for i, want := range []string{"Dunlin", "Sanderling"} {
+		var w weighing.Weighing
+		if err := json.Unmarshal([]byte(lines[i]), &w); err != nil {
+			t.Fatal(err)
+		}
+		if w.Object.Name != want {
+			t.Errorf("line %d is about %s", i+1, w.Object.Name)
+		}
+		for _, n := range w.Nodes {
+			if shared := strings.HasPrefix(n.ID, "reported.") || strings.HasPrefix(n.ID, "lensing.shear.profile"); i == 1 && shared != (n.State == "reused") {
+				t.Errorf("%s was %s", n.ID, n.State)
+			}
+		}
 	}
 }
 
-// The text fits a terminal of 100 columns.
-func TestTextFitsTheTerminal(t *testing.T) {
-	out, _ := succeed(t, "weigh", "--cache", t.TempDir(), curlew(t))
-	for _, line := range strings.Split(out, "\n") {
-		if n := len([]rune(line)); n > 100 {
-			t.Errorf("%d columns: %s", n, line)
+// The texts of the example fit a terminal of 100 columns, and say what is in a
+// node's key in the words of the recipe.
+func TestTextsFitTheTerminal(t *testing.T) {
+	recipe, store := curlew(t), t.TempDir()
+	var texts []string
+	show := func(args ...string) {
+		out, _ := succeed(t, append(args, "--cache", store)...)
+		texts = append(texts, out)
+	}
+	show("weigh", recipe)
+	edit(t, filepath.Join(filepath.Dir(recipe), "temperature.csv"), "1.1,1.6,6.53", "1.1,1.6,6.63")
+	edit(t, recipe, "draws = 500", "draws = 400")
+	edit(t, recipe, "hubble_constant = \"70 km/s/Mpc\"", "hubble_constant = \"68 km/s/Mpc\"")
+	edit(t, recipe, "radii_from = lensing.shapes.nfw", "radii_from = \"own\"")
+	show("weigh", recipe)
+	show("since", recipe)
+	for _, name := range []string{"reconcile", "reported.earlier_shear", "dynamics.redshifts.virial"} {
+		show("trace", recipe, name)
+	}
+	for _, text := range texts {
+		for _, line := range strings.Split(text, "\n") {
+			if n := len([]rune(line)); n > 100 && !strings.Contains(line, "sha256") {
+				t.Errorf("%d columns: %s", n, line)
+			}
+			for _, raw := range []string{"exact(", "unit \"", "nuisance \"", "length true", "present", "two_piece"} {
+				if strings.Contains(line, raw) {
+					t.Errorf("%q is of the key, not for people: %s", raw, line)
+				}
+			}
 		}
+	}
+	if n := strings.Count(texts[2], "\n"); n > 45 {
+		t.Errorf("since takes %d lines:\n%s", n, texts[2])
 	}
 }

@@ -237,7 +237,7 @@ func (c *Comparison) inputs(from, to *Past) {
 			case x.Fact == "arithmetic", x.Fact == "layout of keys":
 				note(&c.Program, Change{x.Fact, x.From, x.To})
 			case x.Fact == "kind":
-				note(&c.Assumptions, Change{now.ID + ": method", method(x.From), method(x.To)})
+				note(&c.Assumptions, Change{now.ID + ": method", methodOf(x.From), methodOf(x.To)})
 			case otherMethod && (x.From == "" || x.To == "" || x.Fact == "version"): // a setting of one method alone
 			default:
 				c.Assumptions = noteParameter(c.Assumptions, now, x.Fact, x.From, x.To)
@@ -247,7 +247,7 @@ func (c *Comparison) inputs(from, to *Past) {
 	slices.SortStableFunc(c.Program, func(a, b Change) int { return cmp.Compare(a.Name, b.Name) })
 }
 
-func method(kind string) string {
+func methodOf(kind string) string {
 	_, name, _ := strings.Cut(kind, "/")
 	return name
 }

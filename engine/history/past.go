@@ -75,7 +75,9 @@ func Remember(store *cache.Store, recipe, program string, now time.Time, w *weig
 		return entered, false, err
 	}
 	if n := len(list); n > 0 && list[n-1].Body == cache.DigestOf(body) {
-		return list[n-1], false, nil
+		if _, err := store.Output(list[n-1].Body); err == nil { // else it was lost, and is stored again
+			return list[n-1], false, nil
+		}
 	}
 	entered = cache.Weighing{Recipe: recipe, Finished: now.UTC(), Program: program}
 	entered.Number, err = store.Remember(entered, body)
