@@ -64,6 +64,9 @@ func runHalfLight(ctx context.Context, t *estimate.Task) (*infer.Draws, error) {
 		return nil, err
 	}
 	size := t.Settings["half_light_radius"]
+	if !(size.Prior.A > 0) {
+		return nil, t.Errorf("half_light_radius must be positive")
+	}
 	scale := kpc(t, 1, size.Unit)
 	radius := a.parameters.Draw("half_light_radius", "kpc", scaled(size.Prior, scale))
 	drawn, err := a.draw(t, obs, func(_ int, theta []float64) (m200, c float64) {

@@ -241,34 +241,39 @@ func TestCoverageOfJeans(t *testing.T) {
 		t.Fatal(err)
 	}
 	for _, n := range []int{50, 200, 1000} {
-		const mocks = 200
-		inside, mean := 0, 0.0
-		for k := range uint64(mocks) {
-			rng := rand.New(rand.NewPCG(k, uint64(n)))
-			truth := invented
-			truth.M200, truth.C200 = mass.FromScore(rng.NormFloat64()), c200.FromScore(rng.NormFloat64())
-			catalogue := truth.Motions(mock.Motions{Members: n, Radius: within(truth, 1.2), Reach: 20, RedshiftError: 1e-4, Anisotropy: beta.FromScore(rng.NormFloat64())}, rng)
-			task := weighing(t, truth, tableOf(catalogue), "given")
-			task.Sampling.Stream = infer.NewStream(fmt.Sprint(n, k))
-			if _, err := reduced(t, task); err != nil {
-				t.Fatal(err)
-			}
-			d, err := weigh(t, task, jeans, method.Settings{
-				"intrinsic_scatter": method.Exactly(0), "mass": {Set: true, Prior: mass}, "concentration": {Set: true, Prior: c200},
-			})
-			if err != nil {
-				t.Fatal(err)
-			}
-			p := infer.Percentiles(d.Parameter("mass_200c").Values, 16, 50, 84)
-			if p[0] < truth.M200 && truth.M200 < p[2] {
-				inside++
-			}
-			mean += math.Log(p[1]/truth.M200) / mocks
-		}
-		share := float64(inside) / mocks
-		t.Logf("%d galaxies: %.3f of the intervals hold the truth, mean offset of ln M %+.3f", n, share, mean)
-		between(t, fmt.Sprintf("coverage with %d galaxies", n), share, 0.683-3*math.Sqrt(0.683*0.317/mocks), 0.683+3*math.Sqrt(0.683*0.317/mocks))
+		t.Run(fmt.Sprint(n), func(t *testing.T) { jeansCoverage(t, n, mass, c200, beta) })
 	}
+}
+
+func jeansCoverage(t *testing.T, n int, mass, c200, beta prior.Prior) {
+	t.Helper()
+	const mocks = 200
+	inside, mean := 0, 0.0
+	for k := range uint64(mocks) {
+		rng := rand.New(rand.NewPCG(k, uint64(n)))
+		truth := invented
+		truth.M200, truth.C200 = mass.FromScore(rng.NormFloat64()), c200.FromScore(rng.NormFloat64())
+		catalogue := truth.Motions(mock.Motions{Members: n, Radius: within(truth, 1.2), Reach: 20, RedshiftError: 1e-4, Anisotropy: beta.FromScore(rng.NormFloat64())}, rng)
+		task := weighing(t, truth, tableOf(catalogue), "given")
+		task.Sampling.Stream = infer.NewStream(fmt.Sprint(n, k))
+		if _, err := reduced(t, task); err != nil {
+			t.Fatal(err)
+		}
+		d, err := weigh(t, task, jeans, method.Settings{
+			"intrinsic_scatter": method.Exactly(0), "mass": {Set: true, Prior: mass}, "concentration": {Set: true, Prior: c200},
+		})
+		if err != nil {
+			t.Fatal(err)
+		}
+		p := infer.Percentiles(d.Parameter("mass_200c").Values, 16, 50, 84)
+		if p[0] < truth.M200 && truth.M200 < p[2] {
+			inside++
+		}
+		mean += math.Log(p[1]/truth.M200) / mocks
+	}
+	share := float64(inside) / mocks
+	t.Logf("%d galaxies: %.3f of the intervals hold the truth, mean offset of ln M %+.3f", n, share, mean)
+	between(t, fmt.Sprintf("coverage with %d galaxies", n), share, 0.683-3*math.Sqrt(0.683*0.317/mocks), 0.683+3*math.Sqrt(0.683*0.317/mocks))
 }
 
 func BenchmarkJeans500(b *testing.B) {

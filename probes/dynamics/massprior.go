@@ -2,6 +2,7 @@ package dynamics
 
 import (
 	"math"
+	"slices"
 
 	"steelyard/probes/estimate"
 	"steelyard/probes/infer"
@@ -32,6 +33,9 @@ func underMassPrior(t *estimate.Task, s *infer.Sample, masses []float64) error {
 			weights[i] = mass.LogDensity(m) + math.Log(m)
 		}
 		highest = max(highest, weights[i])
+	}
+	if math.IsInf(highest, -1) && !(slices.Max(masses) > 0) {
+		return t.Errorf("no NFW halo between 1e9 and 1e18 Msun has the mass that the motions ask for")
 	}
 	if math.IsInf(highest, -1) {
 		return t.Errorf("the prior on the mass, %s Msun, excludes all masses that the motions allow (median %.3g Msun)", mass, infer.Percentiles(masses, 50)[0])

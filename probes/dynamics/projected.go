@@ -39,6 +39,9 @@ var projectedMass = estimate.Method{
 			"The mean of v²R hangs on the outermost galaxies: interlopers raise it more than they raise a dispersion.",
 			"No correction is made for the system's going on beyond the aperture.",
 		},
+		Measured: "On isotropic NFW haloes in equilibrium (100 mocks each, quoted error alone): ln M off by +0.45 to +0.73, intervals of 68% hold the truth in 0 to 17%, " +
+			"for no surface-pressure correction is made; with field galaxies mixed in up to +1.2. The bias is not taken out. " +
+			"STEELYARD_SLOW=1 go test -v -run TestMeasuredBias ./probes/dynamics",
 	},
 	Uses: []string{"members"},
 	Run:  runProjected,

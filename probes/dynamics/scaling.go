@@ -47,6 +47,9 @@ var dispersionScaling = estimate.Method{
 			"The relations hold for relaxed haloes on average; mergers raise the dispersion.",
 			"The aperture correction takes isotropic orbits and galaxies that follow the mass.",
 		},
+		Measured: "With evrard-2008 on isotropic NFW haloes in equilibrium (100 mocks each, quoted error alone): ln M off by −0.03 to −0.08, intervals of 68% hold the truth in 57 to 74%; " +
+			"the halo itself lies 0.12 below the relation. With a quarter of field and a tenth of infalling galaxies mixed in: sigma-clip +0.04 to +0.17 (37 to 57%), shifting-gapper 0.00 to +0.20 (39 to 64%). " +
+			"STEELYARD_SLOW=1 go test -v -run TestMeasuredBias ./probes/dynamics",
 	},
 	Uses: []string{"members"},
 	Run:  runScaling,
