@@ -2,7 +2,6 @@ package dynamics
 
 import (
 	"context"
-	"math"
 	"testing"
 
 	"steelyard/probes/catalogue"
@@ -16,9 +15,6 @@ import (
 // invented is the halo of these tests; its galaxies come from package mock,
 // which shares nothing with the estimators but the constants.
 var invented = mock.Truth{Redshift: 0.1, RA: 2.1, Dec: 0.4, HubbleConstant: 70, OmegaMatter: 0.3, M200: 8e14, C200: 4}
-
-// arcmin in radians.
-const arcmin = math.Pi / 180 / 60
 
 // within returns the angle of so many R200 of a truth.
 func within(t mock.Truth, radii float64) float64 {

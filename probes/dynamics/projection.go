@@ -132,12 +132,6 @@ func (s *sphere) step(i int) float64 {
 	return w[0]*f[0] + w[1]*f[1] + w[2]*f[2] + w[3]*f[3] + w[4]*f[4] + w[5]*f[5]
 }
 
-// at reads σ_los² at ln R by four-point interpolation; inside the first radius it
-// is that of the first.
-func (s *sphere) at(lnR float64) float64 {
-	return table{s.lnFrom, 2 * gridStep, s.variance}.at(lnR)
-}
-
 // stencil is the number of grid points through which functions are taken as
 // polynomials between two of them.
 const stencil = 6

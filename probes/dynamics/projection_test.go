@@ -39,6 +39,12 @@ func TestLineOfSightDispersions(t *testing.T) {
 	}
 }
 
+// at reads σ_los² at ln R by four-point interpolation; inside the first radius it
+// is that of the first.
+func (s *sphere) at(lnR float64) float64 {
+	return table{s.lnFrom, 2 * gridStep, s.variance}.at(lnR)
+}
+
 func TestRisingOrbits(t *testing.T) {
 	// With its scale radius at infinity or zero, or β_∞ = 0, the rising orbits are
 	// those of a constant β.
