@@ -22,12 +22,12 @@ type display struct {
 	quiet   bool
 	running []started
 	shown   time.Time
-	counts  map[engine.State]int
-	length  int // of the live line
+	states  map[string]engine.State // of the nodes that are done
+	length  int                     // of the live line
 }
 
 func (o *options) progress() *display {
-	d := &display{out: o.err, quiet: o.quiet, counts: map[engine.State]int{}}
+	d := &display{out: o.err, quiet: o.quiet, states: map[string]engine.State{}}
 	if f, ok := o.err.(*os.File); ok {
 		d.live = term.IsTerminal(int(f.Fd()))
 	}
@@ -47,7 +47,9 @@ func (d *display) event(e engine.Event) {
 	case engine.Started:
 		d.running = append(d.running, started{e.Node, time.Now(), e.Expected})
 	case engine.Finished:
-		d.counts[e.State]++
+		if d.states[e.Node] != engine.Computed { // it was, in an earlier round
+			d.states[e.Node] = e.State
+		}
 		for i, r := range d.running {
 			if r.id == e.Node {
 				d.running = append(d.running[:i:i], d.running[i+1:]...)
@@ -107,9 +109,13 @@ func (d *display) close() {
 	if d.quiet {
 		return
 	}
+	counts := map[engine.State]int{}
+	for _, s := range d.states {
+		counts[s]++
+	}
 	var parts []string
 	for _, s := range []engine.State{engine.Computed, engine.Reused, engine.Failed, engine.Blocked} {
-		if n := d.counts[s]; n > 0 {
+		if n := counts[s]; n > 0 {
 			parts = append(parts, fmt.Sprintf("%d %s", n, s))
 		}
 	}

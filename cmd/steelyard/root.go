@@ -13,6 +13,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"steelyard/cache"
+	"steelyard/engine/assemble"
 )
 
 // Exit statuses.
@@ -45,6 +46,7 @@ type options struct {
 	workers int
 	json    bool
 	quiet   bool
+	ask     assemble.Ask
 	out     io.Writer
 	err     io.Writer
 }

@@ -41,6 +41,7 @@ or a data file changes, until an interrupt.`,
 		},
 	}
 	c.Flags().Float64Var(&failAbove, "fail-above", 0, "exit with status 3 when any tension exceeds this many sigma")
+	c.Flags().BoolVar(&o.ask.Levers, "levers", false, "ask what would bring the worst pair to 1σ also where the verdict is consistent")
 	c.Flags().BoolVar(&watch, "watch", false, "weigh again whenever a recipe or its data change")
 	return c
 }
@@ -122,9 +123,7 @@ func (o *options) weighOne(ctx context.Context, store *cache.Store, path string)
 		return nil, err
 	}
 	display := o.progress()
-	report, err := engine.Run(ctx, p.graph, store, engine.Options{
-		Recipe: p.path, Workers: o.workers, Program: version(), Events: display.event,
-	})
+	report, err := o.execute(ctx, store, p, display)
 	display.close()
 	o.warn(report.Warnings())
 	switch {

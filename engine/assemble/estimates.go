@@ -216,12 +216,22 @@ func blocksOf(m estimate.Method, pr estimate.Probe, data []recipes.Data) []strin
 
 // reported plans a published mass.
 func (p *Plan) reported(m recipes.Reported) error {
+	n, err := p.reportedNode(m)
+	if err != nil {
+		return err
+	}
+	p.Nodes = append(p.Nodes, n)
+	p.estimates = append(p.estimates, planned{name: n.ID, block: n.ID, probe: m.Probe, method: "reported", masses: n.ID + ".masses"})
+	return nil
+}
+
+func (p *Plan) reportedNode(m recipes.Reported) (engine.Node, error) {
 	name := "reported." + m.Name
 	stated := p.background
 	if m.Cosmology != nil {
 		var err error
 		if stated, err = universe(*m.Cosmology); err != nil {
-			return err
+			return engine.Node{}, err
 		}
 	}
 	// A radius quoted as an angle stays one: it is a length in the cosmology it was
@@ -240,9 +250,7 @@ func (p *Plan) reported(m recipes.Reported) error {
 		}
 		return encode(draws)
 	}
-	p.Nodes = append(p.Nodes, n)
-	p.estimates = append(p.estimates, planned{name: name, block: name, probe: m.Probe, method: "reported", masses: name + ".masses"})
-	return nil
+	return n, nil
 }
 
 // massesVersion is raised when the same draws would be summarised otherwise.

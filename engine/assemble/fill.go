@@ -28,18 +28,25 @@ func (p *Plan) Fill(ctx context.Context, o Outcome) (*weighing.Weighing, error) 
 			done[r.Node.ID] = true
 		}
 		w.Nodes = append(w.Nodes, node)
-		if r.State == engine.Failed {
+		if r.State == engine.Failed && !p.trials[r.Node.ID] {
 			w.Failures = append(w.Failures, weighing.Failure{Node: r.Node.ID, Where: r.Node.Where, Reason: reason(r.Err)})
 		}
 	}
 	compared := comparison{}
-	if done[tensionNode] {
-		if err := read(ctx, o, tensionNode, &compared); err != nil {
+	if tension := tensionNode + p.suffix; done[tension] {
+		if err := read(ctx, o, tension, &compared); err != nil {
 			return nil, err
 		}
 	}
+	if p.levers != nil {
+		p.readTrials(ctx, o, p.levers)
+		w.Levers = p.levers.weigh()
+	}
 	w.Tensions, w.Profiles, w.Spreads = compared.Tensions, compared.Profiles, compared.Spreads
 	w.Consistency, w.Combined, w.Whole, w.Warnings = compared.Consistency, compared.Combined, compared.Whole, compared.Warnings
+	for i := range w.Consistency {
+		w.Consistency[i].Given = p.given(w.Consistency[i].Of)
+	}
 	for _, e := range p.estimates {
 		if !done[e.masses] {
 			continue

@@ -19,6 +19,12 @@ type Plan struct {
 	background *cosmology.Cosmology
 	object     estimate.Object
 	estimates  []planned
+
+	// What the rounds after the weighing have come to.
+	suffix      string // of the comparison that holds
+	levers      *levers
+	leverRounds int
+	trials      map[string]bool // nodes that may fail: an estimate that an assumption makes impossible
 }
 
 // planned is one estimate of the plan.
@@ -34,7 +40,7 @@ func New(r *recipes.Recipe) (*Plan, error) {
 		return nil, err
 	}
 	p := &Plan{
-		Recipe: r, background: background,
+		Recipe: r, background: background, trials: map[string]bool{},
 		object: estimate.Object{Name: r.Object.Name, Redshift: r.Object.Redshift, RA: r.Object.RA, Dec: r.Object.Dec, HasCentre: r.Object.HasCentre},
 	}
 	for _, b := range r.Blocks {

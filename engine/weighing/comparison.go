@@ -81,3 +81,23 @@ type Whole struct {
 	Own       []Own `json:"own"`
 	Scattered []Own `json:"random_effects,omitempty"`
 }
+
+// Lever is what one assumption would have to be to bring the worst pair to one
+// sigma. Value is absent where it cannot.
+type Lever struct {
+	At         string   `json:"at"`
+	A          string   `json:"a"`
+	B          string   `json:"b"`
+	Assumption string   `json:"assumption"`
+	Unit       string   `json:"unit,omitempty"`
+	Present    float64  `json:"value_now"`
+	Value      *float64 `json:"value_needed,omitempty"`
+	InPriorSD  *float64 `json:"in_prior_sd,omitempty"` // absent for an exact number
+	// Sigma, All and Chi2 are the pair's, that of all and the change of the
+	// estimates' own χ², with the assumption there.
+	Sigma        *float64 `json:"sigma_then,omitempty"`
+	All          *float64 `json:"sigma_of_all_then,omitempty"`
+	Chi2         *float64 `json:"chi2_change,omitempty"`
+	Interpolated bool     `json:"interpolated,omitempty"` // between trials, not run itself
+	Cannot       string   `json:"cannot,omitempty"`       // why it cannot do it
+}

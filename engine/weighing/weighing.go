@@ -31,6 +31,7 @@ type Weighing struct {
 	Consistency []Consistency `json:"consistency,omitempty"`
 	Combined    []Combined    `json:"combined,omitempty"`
 	Whole       *Whole        `json:"combined_profile,omitempty"`
+	Levers      []Lever       `json:"levers,omitempty"`
 	Warnings    []string      `json:"warnings,omitempty"` // of the comparison
 	Failures    []Failure     `json:"failures,omitempty"`
 	Nodes       []Node        `json:"nodes"`
