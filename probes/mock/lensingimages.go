@@ -29,7 +29,8 @@ type ArcCatalogue struct {
 // the plane of the sky is cut into triangles, and an image lies in each triangle
 // whose corners, mapped back, surround the source (Schneider, Ehlers & Falco
 // 1992, §10; from memory). The deflection is the slope of a tabulated potential.
-// Sources are even over the region that has at least that many images.
+// Sources are even over the part of the square of the Einstein radius about the
+// centre that has at least that many images.
 func (t Truth) Arcs(a Arcs, rng *rand.Rand) *ArcCatalogue {
 	l := t.lens()
 	horizon := t.horizon(l)
@@ -41,7 +42,7 @@ func (t Truth) Arcs(a Arcs, rng *rand.Rand) *ArcCatalogue {
 		// D_ls/D_s in units of that of a source at infinity, in a flat universe.
 		g := s.grid((far - l.near) / far / ((horizon - l.near) / horizon))
 		for {
-			sx, sy := s.width*(2*rng.Float64()-1), s.width*(2*rng.Float64()-1)
+			sx, sy := s.width*(rng.Float64()-0.5), s.width*(rng.Float64()-0.5)
 			images := g.images(sx, sy, a.FaintestFactor)
 			if len(images) < a.Fewest {
 				continue
