@@ -1,9 +1,9 @@
 package xray
 
 import (
-	"errors"
 	"fmt"
 	"slices"
+	"strings"
 
 	"steelyard/probes/catalogue"
 	"steelyard/probes/estimate"
@@ -76,9 +76,9 @@ func readBins(t *estimate.Task, block, quantity string) (*Bins, error) {
 
 // check refuses impossible rows, and snaps edges that touch but for rounding.
 func (b *Bins) check(t *estimate.Task, table *catalogue.Table, rows []int, quantity string) error {
-	var faults []error
+	var faults []string
 	fault := func(i int, format string, args ...any) {
-		faults = append(faults, fmt.Errorf("%s, row %d: %s", table.File, rows[i], fmt.Sprintf(format, args...)))
+		faults = append(faults, fmt.Sprintf("%s, row %d: %s", table.File, rows[i], fmt.Sprintf(format, args...)))
 	}
 	for i := range b.Value {
 		width := b.Outer[i] - b.Inner[i]
@@ -112,11 +112,16 @@ func (b *Bins) check(t *estimate.Task, table *catalogue.Table, rows []int, quant
 			b.Notes = append(b.Notes, fmt.Sprintf("%s: no %s between %.4g kpc and %.4g kpc (rows %d and %d)", table.File, quantity, b.Outer[i-1], b.Inner[i], rows[i-1], rows[i]))
 		}
 	}
-	if len(faults) > mostComplaints {
-		faults = append(faults[:mostComplaints], fmt.Errorf("%s: and %d more", table.File, len(faults)-mostComplaints))
+	return complain(t, table, faults)
+}
+
+// complain makes one error of the faults of a file, nil of none.
+func complain(t *estimate.Task, table *catalogue.Table, faults []string) error {
+	if len(faults) == 0 {
+		return nil
 	}
-	if len(faults) > 0 {
-		return t.Errorf("%w", errors.Join(faults...))
+	if more := len(faults) - mostComplaints; more > 0 {
+		faults = append(faults[:mostComplaints], fmt.Sprintf("%s: and %d more", table.File, more))
 	}
-	return nil
+	return t.Errorf("%s", strings.Join(faults, "; "))
 }

@@ -92,6 +92,10 @@ var temperatureBlock = method.Block{
 			Doc: "true for spectra of annuli on the sky, which see all gas along the line of sight; false for deprojected shells",
 		},
 		{
+			Name: "model", Kind: method.Choice, Planned: []string{"cool-core"},
+			Doc: "a published form of the temperature instead of a file", Source: "Vikhlinin et al. 2006",
+		},
+		{
 			Name: "psf_width", Kind: method.Exact, Unit: "kpc", Length: true, Low: 0, High: 1e5,
 			Doc: "width of the telescope's point-spread function; annuli narrower than this are told, unless `mixing` is given",
 		},

@@ -1,7 +1,6 @@
 package xray
 
 import (
-	"errors"
 	"fmt"
 
 	"steelyard/probes/catalogue"
@@ -18,9 +17,9 @@ func readMixing(t *estimate.Task, table *catalogue.Table, n int, reversed bool) 
 	if len(from) != table.Len() || len(into) != table.Len() || len(value) != table.Len() {
 		return nil, t.Errorf("%s: a mixing matrix needs the columns from, into and share", table.File)
 	}
-	var faults []error
+	var faults []string
 	fault := func(i int, format string, args ...any) {
-		faults = append(faults, fmt.Errorf("%s, row %d: %s", table.File, table.Rows[i], fmt.Sprintf(format, args...)))
+		faults = append(faults, fmt.Sprintf("%s, row %d: %s", table.File, table.Rows[i], fmt.Sprintf(format, args...)))
 	}
 	place := func(x float64) (int, bool) {
 		k := int(x)
@@ -54,14 +53,11 @@ func readMixing(t *estimate.Task, table *catalogue.Table, n int, reversed bool) 
 			number = n - a
 		}
 		if len(faults) == 0 && !(sum > 0 && sum <= 1+rounding) {
-			faults = append(faults, fmt.Errorf("%s: the shares of annulus %d add up to %g; they lie above 0 and no higher than 1", table.File, number, sum))
+			faults = append(faults, fmt.Sprintf("%s: the shares of annulus %d add up to %g; they lie above 0 and no higher than 1", table.File, number, sum))
 		}
 	}
-	if len(faults) > mostComplaints {
-		faults = append(faults[:mostComplaints], fmt.Errorf("%s: and %d more", table.File, len(faults)-mostComplaints))
-	}
-	if len(faults) > 0 {
-		return nil, t.Errorf("%w", errors.Join(faults...))
+	if err := complain(t, table, faults); err != nil {
+		return nil, err
 	}
 	return share, nil
 }
