@@ -85,8 +85,12 @@ func TestTrace(t *testing.T) {
 	if n := x.Nodes[2]; n.ID != "lensing.shear.nfw" || n.Changed == nil || n.Changed.Facts[0] != (history.Change{Name: "estimate.shear_bias", From: "normal(0, 0.02)", To: "normal(0, 0.05)"}) {
 		t.Errorf("what changed: %+v", n.Changed)
 	}
-	var prov map[string]any
-	if out, _ = succeed(t, "trace", "--prov", "--cache", store, recipe, "reconcile"); json.Unmarshal([]byte(out), &prov) != nil || len(prov["activity"].(map[string]any)) != 6 {
+	out, _ = succeed(t, "trace", "--json", "--cache", store, recipe, "reconcile")
+	if err := json.Unmarshal([]byte(out), &x); err != nil || x.Nodes[len(x.Nodes)-1].ID != "reconcile.tension" {
+		t.Errorf("%v: %s", err, out)
+	}
+	var prov struct{ Activity map[string]any }
+	if out, _ = succeed(t, "trace", "--prov", "--cache", store, recipe, "reconcile"); json.Unmarshal([]byte(out), &prov) != nil || len(prov.Activity) != len(x.Nodes) {
 		t.Errorf("PROV-JSON: %s", out)
 	}
 	text := func() string {

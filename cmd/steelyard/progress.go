@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"slices"
 	"strings"
 	"time"
 
@@ -24,10 +25,11 @@ type display struct {
 	shown   time.Time
 	states  map[string]engine.State // of the nodes that are done
 	length  int                     // of the live line
+	told    map[string]bool         // warnings shown
 }
 
 func (o *options) progress() *display {
-	d := &display{out: o.err, quiet: o.quiet, states: map[string]engine.State{}}
+	d := &display{out: o.err, quiet: o.quiet, states: map[string]engine.State{}, told: map[string]bool{}}
 	if f, ok := o.err.(*os.File); ok {
 		d.live = term.IsTerminal(int(f.Fd()))
 	}
@@ -60,6 +62,7 @@ func (d *display) event(e engine.Event) {
 			fmt.Fprintf(d.out, "computed %s in %.2f s\n", e.Node, e.Seconds)
 		}
 	case engine.Warning:
+		d.told[e.Text] = true
 		d.clear()
 		fmt.Fprintf(d.out, "steelyard: warning: %s\n", e.Text)
 	}
@@ -101,6 +104,11 @@ func (d *display) clear() {
 		fmt.Fprintf(d.out, "\r%s\r", strings.Repeat(" ", d.length))
 		d.length = 0
 	}
+}
+
+// untold gives the warnings that were not shown while they came about.
+func (d *display) untold(warnings []string) []string {
+	return slices.DeleteFunc(warnings, func(w string) bool { return d.told[w] })
 }
 
 // close ends the display with a count of what became of the nodes.

@@ -44,7 +44,7 @@ func curlew(t *testing.T) string {
 		t.Fatal(err)
 	}
 	recipe := filepath.Join(dir, "recipe.hcl")
-	edit(t, recipe, "draws = 4000", "draws = 500")
+	edit(t, recipe, "draws = 4000", "draws = 300")
 	return recipe
 }
 
@@ -332,7 +332,7 @@ func TestTextsFitTheTerminal(t *testing.T) {
 	}
 	show("weigh", recipe)
 	edit(t, filepath.Join(filepath.Dir(recipe), "temperature.csv"), "1.1,1.6,6.53", "1.1,1.6,6.63")
-	edit(t, recipe, "draws = 500", "draws = 400")
+	edit(t, recipe, "draws = 300", "draws = 250")
 	edit(t, recipe, "hubble_constant = \"70 km/s/Mpc\"", "hubble_constant = \"68 km/s/Mpc\"")
 	edit(t, recipe, "radii_from = lensing.shapes.nfw", "radii_from = \"own\"")
 	show("weigh", recipe)

@@ -125,7 +125,7 @@ func (o *options) weighOne(ctx context.Context, store *cache.Store, path string)
 	display := o.progress()
 	report, err := o.execute(ctx, store, p, display)
 	display.close()
-	o.warn(report.Warnings())
+	o.warn(display.untold(report.Warnings()))
 	switch {
 	case errors.Is(err, errChanged):
 		return nil, &exit{exitFailed, nil} // watch says why
@@ -137,7 +137,9 @@ func (o *options) weighOne(ctx context.Context, store *cache.Store, path string)
 	case err != nil:
 		return nil, &exit{exitFailed, err}
 	}
+	told := len(report.Warnings())
 	w, err := p.plan.Fill(ctx, report)
+	o.warn(report.Warnings()[told:]) // outputs that had to be computed again after all
 	if err != nil {
 		return nil, &exit{exitFailed, err}
 	}

@@ -25,6 +25,7 @@ type Comparison struct {
 	Appeared    []string           `json:"appeared"` // estimates
 	Gone        []string           `json:"gone"`     // estimates
 	Masses      []MassMove         `json:"masses"`
+	Combined    []MassMove         `json:"combined"` // masses of all together
 	Tensions    []TensionMove      `json:"tensions"`
 	Consistency []ConsistencyMove  `json:"consistency"`
 	Failures    []weighing.Failure `json:"failures"` // of the second weighing
@@ -95,7 +96,7 @@ func Compare(from, to *Past, first, second Mark) *Comparison {
 	c := &Comparison{
 		Schema: "steelyard/since/1", Object: to.Weighing.Object, From: first, To: second,
 		Files: compareFiles(from, to), Assumptions: []Change{}, Program: []Change{}, Appeared: []string{}, Gone: []string{},
-		Masses: []MassMove{}, Tensions: []TensionMove{}, Consistency: []ConsistencyMove{}, Failures: []weighing.Failure{},
+		Masses: []MassMove{}, Combined: []MassMove{}, Tensions: []TensionMove{}, Consistency: []ConsistencyMove{}, Failures: []weighing.Failure{},
 	}
 	c.Failures = append(c.Failures, to.Weighing.Failures...)
 	c.inputs(from, to)
@@ -204,6 +205,12 @@ func (c *Comparison) tensions(from, to *weighing.Weighing) {
 		was := from.Tensions[i]
 		c.Tensions = append(c.Tensions, TensionMove{now.At, now.A, now.B, was.Ratio, now.Ratio, moved(was.Ratio, now.Ratio), was.Sigma, now.Sigma})
 	}
+	for _, now := range to.Combined {
+		if i := slices.IndexFunc(from.Combined, func(m weighing.Combined) bool { return m.At == now.At }); i >= 0 {
+			was := from.Combined[i].Mass
+			c.Combined = append(c.Combined, MassMove{"combined", now.At, false, was, now.Mass, moved(was, now.Mass)})
+		}
+	}
 	for _, now := range to.Consistency {
 		i := slices.IndexFunc(from.Consistency, func(k weighing.Consistency) bool { return k.At == now.At })
 		if i < 0 {
@@ -223,7 +230,7 @@ func (c *Comparison) inputs(from, to *Past) {
 	for i := range to.Nodes {
 		now := &to.Nodes[i]
 		before := from.node(now.ID)
-		if before == nil {
+		if before == nil || strings.Contains(now.ID, " ") { // an estimate made again under another prior
 			continue
 		}
 		otherMethod := before.Kind != now.Kind
@@ -231,7 +238,9 @@ func (c *Comparison) inputs(from, to *Past) {
 			switch {
 			case strings.HasPrefix(x.Fact, "file "), strings.HasPrefix(x.Fact, "output of "), x.Fact == "order of the facts":
 			case x.Fact == "name": // of a file: the files say so
-			case now.Kind == "masses" && x.Fact != "version": // follows from the comparison
+			case now.Kind == "masses" && x.Fact != "version", strings.HasPrefix(x.Fact, "own"): // follows from the comparison
+			case strings.HasSuffix(x.Fact, "_version"):
+				note(&c.Program, Change{"version of " + strings.TrimSuffix(x.Fact, "_version"), x.From, x.To})
 			case x.Fact == "version" && !otherMethod:
 				note(&c.Program, Change{"version of " + now.Kind, x.From, x.To})
 			case x.Fact == "arithmetic", x.Fact == "layout of keys":
@@ -296,7 +305,7 @@ func inRecipe(n *Node, fact string) string {
 		case "radii_from", "limits":
 			return "reconcile." + fact
 		}
-		if base, _, _ := strings.Cut(fact, " ("); base == "at" || base == "estimate" {
+		if base, _, _ := strings.Cut(fact, " ("); base == "at" || base == "estimate" || base == "preferred" {
 			return "reconcile." + fact
 		}
 	case fact == "stated_cosmology":

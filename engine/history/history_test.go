@@ -48,7 +48,7 @@ func newDesk(t *testing.T) *desk {
 	d.nodes = []engine.Node{
 		{ID: "lensing.shear.profile.table", Kind: "table", Version: 1, Params: []string{`name = "shear.csv"`, `column.value = "g" unit "" as "" length false text false`}, Files: []string{data}},
 		{ID: "lensing.shear.profile.reduced", Kind: "lensing/profile", Version: 1, Params: []string{"redshift = 0.2", "profile = present", "bins = present", "bins.count = exact(10, 0, 0)"}, Inputs: []string{"lensing.shear.profile.table"}},
-		{ID: "lensing.shear.nfw", Kind: "lensing/tangential-shear", Version: 2, Params: []string{"redshift = 0.2", "seed = 7", "bins = present", "bins.count = exact(10, 0, 0)", "estimate = present", "estimate.concentration = lognormal(4.5, 0.3, 0)"}, Inputs: []string{"lensing.shear.profile.reduced"}},
+		{ID: "lensing.shear.nfw", Kind: "lensing/tangential-shear", Version: 2, Params: []string{"redshift = 0.2", "seed = 7", "infer_version = 1", "bins = present", "bins.count = exact(10, 0, 0)", "estimate = present", "estimate.concentration = lognormal(4.5, 0.3, 0)"}, Inputs: []string{"lensing.shear.profile.reduced"}},
 		{ID: "lensing.shear.nfw.masses", Kind: "masses", Version: 1, Params: []string{"redshift = 0.2", `own = 500 "critical"`}, Inputs: []string{"lensing.shear.nfw"}},
 		{ID: "reconcile.matched", Kind: "reconcile/matched", Version: 1, Params: []string{"redshift = 0.2", "seed = 7", `at = 0 500 "critical"`}, Inputs: []string{"lensing.shear.nfw"}},
 	}
@@ -89,6 +89,7 @@ func newDesk(t *testing.T) *desk {
 		}},
 		Tensions:    []weighing.Tension{{At: "overdensity 500", A: "lensing.shear.nfw", B: "reported.gas", Ratio: weighing.Interval{Median: 0.8, Lo: 0.7, Hi: 0.9}, Sigma: -2.1}},
 		Consistency: []weighing.Consistency{{At: "overdensity 500", Sigma: 2.1, Verdict: "strained"}},
+		Combined:    []weighing.Combined{{At: "overdensity 500", Mass: weighing.Interval{Median: 5e14, Lo: 4.5e14, Hi: 5.5e14}}},
 	}
 	return d
 }
@@ -177,6 +178,15 @@ func TestRememberOnce(t *testing.T) {
 	if w, fresh := d.weigh(); w.Number != 1 || fresh || !w.Finished.Equal(at(t, "2026-03-30 10:00:00")) {
 		t.Errorf("again: %d of %v, fresh %t", w.Number, w.Finished, fresh)
 	}
+	plain := d.nodes
+	trial := d.nodes[2]
+	trial.ID += " with lensing.shear.nfw.concentration = 3"
+	d.nodes = append(d.nodes[:len(d.nodes):len(d.nodes)], trial)
+	d.found.Levers = []weighing.Lever{{At: "overdensity 500"}}
+	if w, fresh := d.weigh(); w.Number != 1 || fresh {
+		t.Errorf("asked for levers: %d, fresh %t", w.Number, fresh)
+	}
+	d.nodes = plain
 	d.text = "# a comment\n" + d.text
 	if w, fresh := d.weigh(); w.Number != 2 || !fresh {
 		t.Errorf("with a comment in the data: %d, fresh %t", w.Number, fresh)
@@ -199,6 +209,7 @@ func TestCompareInputs(t *testing.T) {
 	d.set("seed = 7", "seed = 8")
 	d.set("bins.count = exact(10, 0, 0)", "bins.count = exact(8, 0, 0)")
 	d.set("estimate.concentration = lognormal(4.5, 0.3, 0)", `estimate.concentration = exact(0, 0, 0) relation "duffy-2008"`)
+	d.set("infer_version = 1", "infer_version = 2")
 	d.set(`own = 500 "critical"`, `own = 1000 "critical"`)
 	d.set(`at = 0 500 "critical"`, `at = 0 1000 "critical"`)
 	d.set(`column.value = "g" unit "" as "" length false text false`, `column.value = "g_t" unit "" as "" length false text false`)
@@ -218,7 +229,7 @@ func TestCompareInputs(t *testing.T) {
 	if !slices.Equal(c.Assumptions, want) {
 		t.Errorf("assumptions:\n%+v\nwant\n%+v", c.Assumptions, want)
 	}
-	if want := []Change{{"version of lensing/tangential-shear", "2", "3"}}; !slices.Equal(c.Program, want) {
+	if want := []Change{{"version of infer", "1", "2"}, {"version of lensing/tangential-shear", "2", "3"}}; !slices.Equal(c.Program, want) {
 		t.Errorf("program: %+v", c.Program)
 	}
 	if c.Same() {
@@ -226,7 +237,7 @@ func TestCompareInputs(t *testing.T) {
 	}
 	// Another method: its own settings are not listed one by one.
 	d.nodes[2].Kind = "lensing/aperture-mass"
-	d.nodes[2].Params = append(d.nodes[2].Params[:4:4], "estimate = present", "estimate.filter = exact(0, 0, 0) text \"polynomial\"")
+	d.nodes[2].Params = append(d.nodes[2].Params[:5:5], "estimate = present", "estimate.filter = exact(0, 0, 0) text \"polynomial\"")
 	d.weigh()
 	if want := []Change{{"lensing.shear.nfw: method", "tangential-shear", "aperture-mass"}}; !slices.Equal(d.compare().Assumptions, want) {
 		t.Errorf("another method: %+v", d.compare().Assumptions)
@@ -248,6 +259,7 @@ func TestCompareResults(t *testing.T) {
 	second.Tensions = slices.Clone(d.found.Tensions)
 	second.Tensions[0].Ratio.Median, second.Tensions[0].Sigma = 0.9, -1.1
 	second.Consistency = []weighing.Consistency{{At: "overdensity 500", Sigma: 1.1, Verdict: "consistent"}}
+	second.Combined = []weighing.Combined{{At: "overdensity 500", Mass: weighing.Interval{Median: 5.2e14, Lo: 4.7e14, Hi: 5.7e14}}}
 	second.Failures = []weighing.Failure{{Node: "xray.spectra.backward", Where: "recipe.hcl:9", Reason: "no"}}
 	d.found = &second
 	d.weigh()
@@ -280,6 +292,7 @@ func TestCompareResults(t *testing.T) {
 		"Dunlin: weighing 2 of 2026-03-30 11:00 compared with 1 of 2026-03-30 10:00",
 		"Nothing changed in data, assumptions or program.", "+0.5", "-0.2", "strained → CONSISTENT, 2.1σ → 1.1σ",
 		"New estimates: dynamics.z.virial", "xray.spectra.backward (recipe.hcl:9): no", "-2.1 → -1.1",
+		"at overdensity 500: combined mass 5.0 +0.5 -0.5 → 5.2 +0.5 -0.5, moved +0.4",
 	} {
 		if !strings.Contains(b.String(), want) {
 			t.Errorf("the text does not have %q:\n%s", want, b.String())

@@ -12,6 +12,7 @@ import (
 	"encoding/json"
 	"fmt"
 	"path/filepath"
+	"slices"
 	"strings"
 	"time"
 
@@ -47,16 +48,23 @@ type entry struct {
 }
 
 // Remember records a weighing of a recipe, given by its absolute path, and gives
-// its entry. A weighing that found the same, from the same, as the one before it
+// its entry, without the levers: whether they were asked for makes no other
+// weighing. A weighing that found the same, from the same, as the one before it
 // is not recorded again: the entry, no longer fresh, is that of the one before.
 func Remember(store *cache.Store, recipe, program string, now time.Time, w *weighing.Weighing, results []engine.Result) (entered cache.Weighing, fresh bool, err error) {
-	found, err := w.Record()
+	kept := *w
+	kept.Levers = nil
+	kept.Nodes = slices.DeleteFunc(slices.Clone(w.Nodes), func(n weighing.Node) bool { return isTrial(n.ID) })
+	found, err := kept.Record()
 	if err != nil {
 		return entered, false, err
 	}
 	nodes := []Node{}
 	err = store.View(func(r *cache.Reader) error {
 		for i := range results {
+			if isTrial(results[i].Node.ID) {
+				continue
+			}
 			if record, _ := r.Record(results[i].Key); record != nil {
 				nodes = append(nodes, nodeOf(recipe, results[i].Node, record))
 			}
@@ -83,6 +91,10 @@ func Remember(store *cache.Store, recipe, program string, now time.Time, w *weig
 	entered.Number, err = store.Remember(entered, body)
 	return entered, true, err
 }
+
+// isTrial says that a node tries out another assumption than the recipe's, on the
+// search for levers: its name says which.
+func isTrial(id string) bool { return strings.Contains(id, " with ") }
 
 // encode writes an entry. It is what entry reads, put together by hand: a JSON
 // encoder would go through the weighing once more.

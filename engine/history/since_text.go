@@ -180,6 +180,11 @@ func (t *sinceText) tensions() {
 	if len(moved) == 0 && len(t.Tensions) > 0 {
 		t.printf("No tension moved.\n")
 	}
+	t.together()
+}
+
+// together writes what became of the agreement of all and of their combined mass.
+func (t *sinceText) together() {
 	var lines []string
 	for _, k := range t.Consistency {
 		if k.SigmaFrom != k.SigmaTo || k.VerdictFrom != k.VerdictTo {
@@ -188,6 +193,11 @@ func (t *sinceText) tensions() {
 				verdict = k.VerdictFrom + " → " + strings.ToUpper(k.VerdictTo)
 			}
 			lines = append(lines, fmt.Sprintf("at %s: %s, %.1fσ → %.1fσ", k.At, verdict, k.SigmaFrom, k.SigmaTo))
+		}
+	}
+	for _, m := range t.Combined {
+		if m.From != m.To {
+			lines = append(lines, fmt.Sprintf("at %s: combined mass %s → %s, moved %s", m.Inside, m.From.Scaled(t.unit), m.To.Scaled(t.unit), inErrors(m.Moved)))
 		}
 	}
 	t.list("All together", lines)

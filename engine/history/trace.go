@@ -112,11 +112,19 @@ func Follow(store *cache.Store, list []cache.Weighing, at int, name string) (*Tr
 }
 
 // resolve finds the node that a name means. An estimate means the summary of its
-// draws, for that is what is printed; a data block its reduction, or its table.
+// draws, for that is what is printed; a data block its reduction, or its table;
+// reconcile the comparison.
 func (p *Past) resolve(name string) (*Node, error) {
-	for _, id := range []string{name + ".masses", name, name + ".reduced", name + ".table", name + ".tension"} {
+	for _, id := range []string{name + ".masses", name, name + ".reduced", name + ".table"} {
 		if n := p.node(id); n != nil {
 			return n, nil
+		}
+	}
+	if name == "reconcile" { // the last comparison, for there may be several rounds
+		for _, n := range slices.Backward(p.Nodes) {
+			if n.Kind == "reconcile/tension" {
+				return &n, nil
+			}
 		}
 	}
 	e := &NameError{Name: name}

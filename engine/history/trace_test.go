@@ -99,7 +99,7 @@ func TestFollowSaysWhatChanged(t *testing.T) {
 	for _, want := range []string{
 		"Dunlin, lensing.shear.nfw: weighing 3 of 2026-03-30 12:00", "M inside overdensity 500 = 5.0 +2.0 -1.0 1e14 Msun (R = 1000 +100 -100 kpc)",
 		"file      ../data/shear.csv, sha256 " + trace.Nodes[0].Files[0].Digest, "changed   in weighing 2: bins.count: 10 → 8",
-		"with      redshift = 0.2; seed = 7; bins.count = 8; concentration = 4", "says      read lensing.shear.nfw", "by steelyard v1",
+		"with      redshift = 0.2; seed = 7; infer_version = 1; bins.count = 8; concentration = 4", "says      read lensing.shear.nfw", "by steelyard v1",
 	} {
 		if !strings.Contains(b.String(), want) {
 			t.Errorf("the text does not have %q:\n%s", want, b.String())
