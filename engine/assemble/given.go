@@ -15,13 +15,13 @@ var neutral = map[string]struct {
 	words string
 }{
 	"temperature_scale":     {1, "temperatures calibrated exactly"},
-	"nonthermal_fraction":   {0, "no hydrostatic bias (no pressure but the thermal one)"},
+	"nonthermal_fraction":   {0, "no hydrostatic bias"},
 	"clumping":              {1, "gas that is not clumped"},
 	"shear_bias":            {0, "shears calibrated exactly"},
 	"dilution":              {0, "no cluster members among the sources"},
 	"source_distance_scale": {1, "source distances known exactly"},
 	"miscentring":           {0, "the stated centre"},
-	"elongation":            {1, "a halo no longer along the line of sight than across"},
+	"elongation":            {1, "a halo as long along the line of sight as across"},
 	"velocity_bias":         {1, "galaxies that move like the dark matter"},
 	"intrinsic_scatter":     {0, "no scatter of the mass about the spherical truth"},
 	"interloper_fraction":   {0, "no interlopers"},

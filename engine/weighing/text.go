@@ -13,10 +13,11 @@ import (
 func (w *Weighing) WriteText(out io.Writer) error {
 	t := &text{w: w, unit: w.MassUnit()}
 	t.title()
+	t.verdict()
 	t.masses()
-	for _, c := range w.places() {
-		t.place(c)
-	}
+	t.matched()
+	t.ratios()
+	t.levers()
 	t.checks()
 	t.section("Rests on", func(e Estimate) []string { return e.Assumes })
 	t.cautions()
@@ -54,109 +55,14 @@ func (t *text) wrap(s string) { layout.Wrap(&t.b, "  ", 2, s) }
 
 func (t *text) title() {
 	c := t.w.Cosmology
-	t.printf("%s at z = %g in a universe of H0 = %g km/s/Mpc, Ωm = %g, ΩΛ = %.6g", t.w.Object.Name, t.w.Object.Redshift, c.HubbleConstant, c.OmegaMatter, c.OmegaLambda)
+	t.printf("%s at z = %g (H0 = %g km/s/Mpc, Ωm = %g, ΩΛ = %.6g", t.w.Object.Name, t.w.Object.Redshift, c.HubbleConstant, c.OmegaMatter, c.OmegaLambda)
 	if c.W0 != nil {
 		t.printf(", w0 = %g", *c.W0)
 	}
 	if c.Wa != nil {
 		t.printf(", wa = %g", *c.Wa)
 	}
-	t.printf("\n")
-}
-
-// masses lists every estimate inside its own radii.
-func (t *text) masses() {
-	if len(t.w.Estimates) == 0 {
-		return
-	}
-	t.printf("\nMasses in %s Msun, each inside its own radius (median, 84th and 16th percentile)\n", power(t.unit))
-	head := []string{""}
-	for _, own := range t.w.Estimates[0].Own {
-		head = append(head, "M_"+definition(own))
-	}
-	head = append(head, "R_500c, kpc")
-	rows := [][]string{head}
-	beyond := false
-	for _, e := range t.w.Estimates {
-		row, radius := []string{e.Name}, ""
-		for _, own := range e.Own {
-			row = append(row, own.Mass.Scaled(t.unit).String()+star(own.Extrapolated))
-			beyond = beyond || own.Extrapolated
-			if own.Of == "critical" && own.Overdensity == 500 {
-				radius = own.Radius.String()
-			}
-		}
-		rows = append(rows, append(row, radius))
-	}
-	t.table(rows)
-	if beyond {
-		t.printf("  * extrapolated: beyond the data of that estimate\n")
-	}
-}
-
-// places lists the labels of the places compared, in order.
-func (w *Weighing) places() []string {
-	var labels []string
-	seen := map[string]bool{}
-	for _, e := range w.Estimates {
-		for _, at := range e.At {
-			if !seen[at.At] {
-				labels = append(labels, at.At)
-			}
-			seen[at.At] = true
-		}
-	}
-	return labels
-}
-
-// place compares the estimates at one place.
-func (t *text) place(label string) {
-	own := false
-	var tensions []Tension
-	for _, x := range t.w.Tensions {
-		if x.At == label {
-			tensions, own = append(tensions, x), own || x.Radii == "own"
-		}
-	}
-	radius, rows := 0.0, [][]string{}
-	for _, e := range t.w.Estimates {
-		for _, at := range e.At {
-			if at.At == label {
-				radius = at.Radius
-				rows = append(rows, []string{e.Name, at.Mass.Scaled(t.unit).String() + star(at.Extrapolated)})
-			}
-		}
-	}
-	symbol := strings.TrimPrefix(label, "overdensity ")
-	switch {
-	case own:
-		t.printf("\nOverdensity %s, each estimate at its own radius (own radii, not matched): the masses above\n", symbol)
-	case symbol != label:
-		t.printf("\nM(<R = %.0f kpc), the R of overdensity %s of %s, matched for all; %s Msun\n", radius, symbol, t.w.RadiiFrom, power(t.unit))
-	default:
-		t.printf("\nM(<R = %.0f kpc), matched for all; %s Msun\n", radius, power(t.unit))
-	}
-	if !own {
-		t.table(rows)
-	}
-	rows = [][]string{{"  ratio", "", "σ", "p", "p of any"}}
-	for _, x := range tensions {
-		sigma, family := fmt.Sprintf("%+.1f", x.Sigma), probability(x.PFamily)
-		if x.Tail {
-			sigma = "≈" + sigma
-		}
-		rows = append(rows, []string{x.A + " / " + x.B, x.Ratio.String(), sigma, probability(x.PValue), family})
-	}
-	t.table(rows)
-	for _, c := range t.w.Consistency {
-		if c.At == label {
-			about := ""
-			if c.Tail {
-				about = "≈"
-			}
-			t.printf("  All %d together: %s, %s%.1fσ (p = %s; χ² = %.1f for %d)\n", len(c.Of), strings.ToUpper(c.Verdict), about, c.Sigma, probability(c.PValue), c.Chi2, c.Dof)
-		}
-	}
+	t.printf(")\n")
 }
 
 // checks lists the tests of data and fits, one line an estimate.
