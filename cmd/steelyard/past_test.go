@@ -82,6 +82,12 @@ func TestTrace(t *testing.T) {
 			t.Errorf("%s: %+v", n.ID, n)
 		}
 	}
+	if said := x.Nodes[0].Computed.Diagnostics; len(said) != 1 || said[0] != "4 rows" {
+		t.Errorf("the table says %q", said)
+	}
+	if said := x.Nodes[2].Computed.Diagnostics; len(said) < 2 || !strings.HasPrefix(said[0], "200 draws by ") {
+		t.Errorf("the estimate says %q", said)
+	}
 	if n := x.Nodes[2]; n.ID != "lensing.shear.nfw" || n.Changed == nil || n.Changed.Facts[0] != (history.Change{Name: "estimate.shear_bias", From: "normal(0, 0.02)", To: "normal(0, 0.05)"}) {
 		t.Errorf("what changed: %+v", n.Changed)
 	}

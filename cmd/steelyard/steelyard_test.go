@@ -74,17 +74,6 @@ func weighed(t *testing.T, args ...string) *weighing.Weighing {
 	return &w
 }
 
-// computed lists the nodes that were computed.
-func computed(w *weighing.Weighing) []string {
-	var ids []string
-	for _, n := range w.Nodes {
-		if n.State != "reused" {
-			ids = append(ids, n.ID+" "+n.State)
-		}
-	}
-	return ids
-}
-
 // The masses of the example agree with the truth its data were made from: the
 // compared estimates within 2.6 standard deviations of ln M, which one in a
 // hundred misses by chance.

@@ -184,7 +184,7 @@ func (p *Plan) estimateNode(full string, m estimate.Method, pr estimate.Probe, b
 		if err != nil {
 			return engine.Output{}, err
 		}
-		return encode(draws)
+		return encodeDraws(draws)
 	}
 	return n
 }
@@ -248,7 +248,7 @@ func (p *Plan) reportedNode(m recipes.Reported) (engine.Node, error) {
 		if err != nil {
 			return engine.Output{}, err
 		}
-		return encode(draws)
+		return encodeDraws(draws)
 	}
 	return n, nil
 }

@@ -45,7 +45,9 @@ func (p *Plan) tableNode(id string, d recipes.Data, declared method.Block) engin
 			return engine.Output{}, err
 		}
 		t.File = d.File
-		return encode(t)
+		out, err := encode(t)
+		out.Diagnostics = []string{fmt.Sprintf("%d rows", len(t.Rows))}
+		return out, err
 	}
 	return n
 }
