@@ -39,13 +39,18 @@ func (c *cloud) add(z [][]float64, logp []float64, density func([][]float64) []f
 	c.z, c.logp, c.lnSum = append(c.z, z...), append(c.logp, logp...), append(c.lnSum, sums...)
 }
 
-// weights returns the normalised importance weights of all points, none of them
-// above the mean times √n (Ionides 2008), which keeps one lucky point from
-// drawing the whole mixture to itself.
+// temper is the power of the posterior that the mixture is fitted to. It makes
+// the proposal a little wider than the posterior: too wide costs a little
+// efficiency, too narrow goes unnoticed.
+const temper = 0.85
+
+// weights returns the normalised weights with which all points stand for the
+// tempered posterior, none of them above the mean times √n (Ionides 2008), which
+// keeps one lucky point from drawing the whole mixture to itself.
 func (c *cloud) weights() []float64 {
 	lnW := make([]float64, len(c.z))
 	for i := range lnW {
-		lnW[i] = c.logp[i] - c.lnSum[i]
+		lnW[i] = temper*c.logp[i] - c.lnSum[i]
 	}
 	_, lnMean := normalised(lnW)
 	top := lnMean + math.Log(float64(len(lnW)))/2
@@ -54,6 +59,21 @@ func (c *cloud) weights() []float64 {
 	}
 	w, _ := normalised(lnW)
 	return w
+}
+
+// prune forgets the points that have no say in a fit, those lighter than a
+// millionth of an even share; the proposals they stand for still count.
+func (c *cloud) prune() {
+	w := c.weights()
+	least := 1e-6 / float64(len(w))
+	kept := 0
+	for i, v := range w {
+		if v > least {
+			c.z[kept], c.logp[kept], c.lnSum[kept] = c.z[i], c.logp[i], c.lnSum[i]
+			kept++
+		}
+	}
+	c.z, c.logp, c.lnSum = c.z[:kept], c.logp[:kept], c.lnSum[:kept]
 }
 
 func lnAdd(a, b float64) float64 {
@@ -75,83 +95,55 @@ func priorDensity(z [][]float64) []float64 {
 }
 
 const (
-	mostParts  = 24
-	mostRounds = 14
+	mostParts  = 30
+	mostRounds = 20
+	goodRound  = 0.75 // efficiency at which a round ends the adaptation
+	poorRound  = 0.60 // efficiency below which parts are added
+	heavyRound = 0.50 // tail shape above which parts are added, and the adaptation goes on
 )
 
-// adapt learns the mixture in rounds of proposals until a round's own
-// efficiency (effective size over size) is high or no longer rises.
-func (t *target) adapt(ctx context.Context, m *mixture, c *cloud, s Stream) (*mixture, error) {
-	perRound := 150 + 75*t.dim
+// adapt learns the mixture in rounds of proposals, until a round's own
+// efficiency (effective size over size) is high, or no longer rises and its
+// weights have no heavy tail. Rounds grow as a posterior proves difficult.
+func (t *target) adapt(ctx context.Context, m *mixture, c *cloud, s Stream) (_ *mixture, efficiency float64, err error) {
 	best, stale := 0.0, 0
-	for r := 0; r < mostRounds && stale < 3; r++ {
-		z := m.draw(perRound, s.Sub(fmt.Sprintf("round %d", r)))
+	for r := range mostRounds {
+		z := m.draw((150+75*t.dim)*(4+r)/4, s.Sub(fmt.Sprintf("round %d", r)))
 		logp, err := t.evaluate(ctx, z)
 		if err != nil {
-			return nil, err
+			return nil, 0, err
 		}
-		efficiency := m.efficiency(z, logp)
+		var shape float64
+		efficiency, shape = m.judge(z, logp)
 		c.add(z, logp, m.lnDensity)
+		c.prune()
 		w := c.weights()
-		if efficiency < 0.7 && r > 0 {
+		if (efficiency < poorRound || shape > heavyRound) && r > 0 {
 			for grown := 0; grown < 3 && len(m.parts) < mostParts; grown++ {
-				m = m.grow(c.z, m.shortfall(c.z, w))
+				m = m.grow(c.z, c.logp, w)
 			}
 		}
 		for range 3 {
 			m = m.refit(c.z, w)
 		}
-		if efficiency > 0.85 {
-			break
-		}
 		stale++
 		if efficiency > best+0.03 {
 			best, stale = efficiency, 0
 		}
+		if (efficiency > goodRound || stale >= 3) && shape < heavyRound {
+			break
+		}
 	}
-	m.chooseDof(c.z, c.weights())
-	return m, nil
+	return m, efficiency, nil
 }
 
-// shortfall is the weight of each point times how far the mixture falls short
-// of the posterior there, normalised.
-func (m *mixture) shortfall(z [][]float64, w []float64) []float64 {
-	out := make([]float64, len(w))
-	lnQ := m.lnDensity(z)
-	for i, v := range w {
-		out[i] = math.Log(v) - lnQ[i]
-	}
-	_ = lnQ
-	n, _ := normalised(out)
-	return n
-}
-
-// efficiency is the effective size of the points, proposed by m, over their
-// number.
-func (m *mixture) efficiency(z [][]float64, logp []float64) float64 {
+// judge returns the effective size of the points, proposed by m, over their
+// number, and the tail shape of their weights.
+func (m *mixture) judge(z [][]float64, logp []float64) (efficiency, shape float64) {
 	lnW := m.lnDensity(z)
 	for i := range lnW {
 		lnW[i] = logp[i] - lnW[i]
 	}
 	w, _ := normalised(lnW)
-	return kish(w) / float64(len(z))
-}
-
-// chooseDof picks the degrees of freedom under which the weighted points are
-// most probable.
-func (m *mixture) chooseDof(z [][]float64, w []float64) {
-	bestDof, best := m.dof, math.Inf(-1)
-	for _, dof := range []float64{3, 5, 8, 15, 30} {
-		m.setDof(dof)
-		sum := 0.0
-		for i, l := range m.lnDensity(z) {
-			if w[i] > 0 {
-				sum += w[i] * l
-			}
-		}
-		if sum > best {
-			bestDof, best = dof, sum
-		}
-	}
-	m.setDof(bestDof)
+	return kish(w) / float64(len(z)), smooth(lnW)
 }

@@ -46,6 +46,7 @@ type Quality struct {
 	Evaluations    int     // likelihood evaluations spent
 	Modes          int
 	LogEvidence    float64
+	EvidenceError  float64 // one standard deviation of LogEvidence
 	HasEvidence    bool
 	RHat           float64 // worst split R̂ of the ensemble; 0 when not used
 	Chi2           float64 // of the best fit

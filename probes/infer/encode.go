@@ -48,6 +48,7 @@ func (d *Draws) MarshalBinary() ([]byte, error) {
 	e.integer(q.Evaluations)
 	e.integer(q.Modes)
 	e.number(q.LogEvidence)
+	e.number(q.EvidenceError)
 	e.flag(q.HasEvidence)
 	e.number(q.RHat)
 	e.number(q.Chi2)
@@ -86,7 +87,7 @@ func (d *Draws) UnmarshalBinary(data []byte) error {
 	got.Assumes = r.texts()
 	got.Quality = Quality{
 		Converged: r.flag(), Sampler: r.text(), EffectiveDraws: r.number(), TailShape: r.number(),
-		Evaluations: r.integer(), Modes: r.integer(), LogEvidence: r.number(), HasEvidence: r.flag(),
+		Evaluations: r.integer(), Modes: r.integer(), LogEvidence: r.number(), EvidenceError: r.number(), HasEvidence: r.flag(),
 		RHat: r.number(), Chi2: r.number(), Dof: r.integer(), PValue: r.number(),
 	}
 	for n := r.count(25); n > 0 && r.err == nil; n-- {
@@ -152,7 +153,7 @@ func (d *Draws) Validate() error {
 		name  string
 		value float64
 	}{
-		{"effective draws", q.EffectiveDraws}, {"tail shape", q.TailShape}, {"log evidence", q.LogEvidence},
+		{"effective draws", q.EffectiveDraws}, {"tail shape", q.TailShape}, {"log evidence", q.LogEvidence}, {"error of the log evidence", q.EvidenceError},
 		{"split R̂", q.RHat}, {"χ²", q.Chi2}, {"p-value", q.PValue},
 	} {
 		if !finite(n.value) {

@@ -17,7 +17,7 @@ func sampleDraws() *Draws {
 		Nuisances:  []Parameter{{Name: "shear_bias", Values: []float64{-0.5, 0.25}}},
 		Covers:     [2]float64{200, 3000},
 		Assumes:    []string{"mass_200c ~ loguniform(1e+12, 1e+16)"},
-		Quality:    Quality{Converged: true, Sampler: "importance", EffectiveDraws: 1.9, TailShape: -0.1, Evaluations: 9, Modes: 1, LogEvidence: -7, HasEvidence: true, Chi2: 8, Dof: 8, PValue: 0.43},
+		Quality:    Quality{Converged: true, Sampler: "importance", EffectiveDraws: 1.9, TailShape: -0.1, Evaluations: 9, Modes: 1, LogEvidence: -7, EvidenceError: 0.01, HasEvidence: true, Chi2: 8, Dof: 8, PValue: 0.43},
 		Checks:     []Check{{Name: "cross shear", Statistic: 9.3, PValue: -1, Passed: true, Note: "nothing seen"}},
 		Warnings:   []string{"few draws"},
 	}
@@ -73,6 +73,7 @@ func TestEncodingSeesEveryField(t *testing.T) {
 		"evaluations": func(d *Draws) { d.Quality.Evaluations++ },
 		"modes":       func(d *Draws) { d.Quality.Modes++ },
 		"evidence":    func(d *Draws) { d.Quality.LogEvidence = 0 },
+		"ev. error":   func(d *Draws) { d.Quality.EvidenceError = 0 },
 		"has":         func(d *Draws) { d.Quality.HasEvidence = false },
 		"r hat":       func(d *Draws) { d.Quality.RHat = 1 },
 		"chi2":        func(d *Draws) { d.Quality.Chi2 = 0 },

@@ -1,140 +1,170 @@
 package infer
 
 import (
+	"cmp"
 	"math"
-	"sort"
+	"slices"
 )
 
-// refit moves a mixture towards the posterior known by weighted points: one
+// leastShare is the least share of a part; one that deserves less than a tenth
+// of it is dropped.
+const leastShare = 0.003
+
+// refit moves a mixture towards the distribution known by weighted points: one
 // step of expectation–maximisation for t components, which lowers the
 // Kullback–Leibler divergence (Cappé et al. 2008). weights sum to one. Parts
 // that explain nothing are dropped; the prior's share follows too, but not
 // below defence.
 func (m *mixture) refit(points [][]float64, weights []float64) *mixture {
 	d, parts := m.dim, len(m.parts)
-	t, d2, y := make([]float64, 1+parts), make([]float64, parts), make([]float64, d)
-	share, square, pull := make([]float64, 1+parts), make([]float64, parts), make([]float64, parts)
-	sums := rows(parts, d)
-	covs := rows(parts, d*d)
+	t := m.newTerms()
+	sums := make([]moments, parts)
+	for k := range sums {
+		sums[k] = newMoments(d)
+	}
+	defending := 0.0
 	for i, z := range points {
-		if weights[i] == 0 {
-			continue
-		}
-		total := m.terms(t, d2, y, z)
-		share[0] += weights[i] * math.Exp(t[0]-total)
+		t.set(m, z)
+		defending += weights[i] * math.Exp(t.prior-t.total)
 		for k := range parts {
-			r := weights[i] * math.Exp(t[1+k]-total)
-			if r < 1e-300 {
-				continue
-			}
-			share[1+k] += r
-			square[k] += r * r
-			u := r * (m.dof + float64(d)) / (m.dof + d2[k])
-			pull[k] += u
-			for a := range d {
-				// About the old mean, to keep digits.
-				za := z[a] - m.parts[k].mean[a]
-				sums[k][a] += u * za
-				for b := 0; b <= a; b++ {
-					covs[k][a*d+b] += u * za * (z[b] - m.parts[k].mean[b])
-				}
+			if max(t.core[k], t.stretched[k]) > t.total-negligible {
+				core, stretched := math.Exp(t.core[k]-t.total), math.Exp(t.stretched[k]-t.total)
+				sums[k].add(&m.parts[k], z, t.d2[k], weights[i]*core, weights[i]*stretched)
 			}
 		}
 	}
 	var shares []float64
 	var kept []part
 	for k := range parts {
-		if share[1+k] < 1e-3 && parts > 1 {
-			continue
+		if sums[k].share > leastShare/10 || parts == 1 {
+			kept = append(kept, m.parts[k].moved(&sums[k]))
+			shares = append(shares, max(sums[k].share, leastShare))
 		}
-		p := m.parts[k]
-		count := 0.0
-		if square[k] > 0 {
-			count = share[1+k] * share[1+k] / square[k]
-		}
-		kept = append(kept, p.moved(share[1+k], pull[k], count, sums[k], covs[k]))
-		shares = append(shares, share[1+k])
 	}
-	return newMixture(d, m.dof, share[0], shares, kept)
+	return newMixture(d, defending, shares, kept)
 }
 
-// moved returns the part with the mean and covariance of the points it answers
-// for, leaning on its old covariance as if that were d+2 points more.
-func (p part) moved(share, pull, count float64, sum, cov []float64) part {
-	d := len(p.mean)
-	if !(pull > 0) || count < 2 {
-		return p
+// moments is what one part answers for: its share of the weight and the sums
+// over points, each pulling as hard as the t distribution lets it.
+type moments struct {
+	share, core, square, pull float64
+	mean, cov                 []float64  // about the part's old mean, to keep digits
+	fit                       [3]float64 // log likelihood, but for the norm, with the dofs before, as they are, after
+}
+
+func newMoments(d int) moments { return moments{mean: make([]float64, d), cov: make([]float64, d*d)} }
+
+func (s *moments) add(p *part, z []float64, d2, core, stretched float64) {
+	d := len(z)
+	r := core + stretched
+	s.share += r
+	s.core += core
+	s.square += r * r
+	u := (dofs[p.dof] + float64(d)) * (core/(dofs[p.dof]+d2) + stretched/(stretch*stretch*dofs[p.dof]+d2))
+	s.pull += u
+	for a := range d {
+		za := z[a] - p.mean[a]
+		s.mean[a] += u * za
+		for b := 0; b <= a; b++ {
+			s.cov[a*d+b] += u * za * (z[b] - p.mean[b])
+		}
 	}
-	q := part{mean: make([]float64, d), factor: make([]float64, d*d)}
+	for n := range s.fit {
+		if k := p.dof + n - 1; k >= 0 && k < len(dofs) {
+			s.fit[n] -= core * (dofs[k] + float64(d)) / 2 * math.Log(1+d2/dofs[k])
+		}
+	}
+}
+
+// moved returns the part with the mean, covariance and degrees of freedom of the
+// points it answers for, leaning on its old covariance as if that were d+2
+// points more.
+func (p *part) moved(s *moments) part {
+	d := len(p.mean)
+	count := s.share * s.share / s.square
+	if !(s.pull > 0) || !(count >= 2) {
+		return *p
+	}
+	mean, factor := make([]float64, d), make([]float64, d*d)
 	lean := float64(d+2) / (count + float64(d+2))
 	for a := range d {
-		q.mean[a] = p.mean[a] + sum[a]/pull
+		mean[a] = p.mean[a] + s.mean[a]/s.pull
 	}
 	for a := range d {
 		for b := 0; b <= a; b++ {
 			old := dot(p.factor[a*d:a*d+d], p.factor[b*d:b*d+d])
-			fresh := (cov[a*d+b] - sum[a]*sum[b]/pull) / share
-			q.factor[a*d+b] = (1-lean)*fresh + lean*old
+			fresh := (s.cov[a*d+b] - s.mean[a]*s.mean[b]/s.pull) / s.share
+			factor[a*d+b] = (1-lean)*fresh + lean*old
 		}
 	}
-	if !cholesky(q.factor, d) {
-		return p
+	if !cholesky(factor, d) {
+		return *p
 	}
-	return q
+	best, most := p.dof, math.Inf(-1)
+	for n, fit := range s.fit {
+		if k := p.dof + n - 1; k >= 0 && k < len(dofs) {
+			if fit += s.core * lnStudentNorm(dofs[k], d); fit > most {
+				best, most = k, fit
+			}
+		}
+	}
+	return newPart(mean, factor, best)
 }
 
-// grow adds a part where the mixture is thinnest: about the point of largest
-// weight, with the covariance of its nearest neighbours (incremental mixture
-// importance sampling, Steele, Raftery & Emond 2006).
-func (m *mixture) grow(points [][]float64, weights []float64) *mixture {
-	top := 0
-	for i, w := range weights {
-		if w > weights[top] {
-			top = i
+// grow adds a part where the mixture falls shortest of the posterior: about the
+// point of largest ratio, with the covariance of its nearest neighbours
+// (incremental mixture importance sampling, Steele, Raftery & Emond 2006).
+// weights are the points' importance weights, summing to one.
+func (m *mixture) grow(points [][]float64, logp, weights []float64) *mixture {
+	d, top, most := m.dim, 0, math.Inf(-1)
+	for i, l := range m.lnDensity(points) {
+		if logp[i]-l > most {
+			top, most = i, logp[i]-l
 		}
 	}
 	centre := points[top]
-	d := m.dim
-	t, d2, y := make([]float64, 1+len(m.parts)), make([]float64, len(m.parts)), make([]float64, d)
-	m.terms(t, d2, y, centre)
-	near := 0
-	for k := range m.parts {
-		if t[1+k] > t[1+near] {
-			near = k
-		}
-	}
-	metric := m.parts[near].factor
+	metric := m.nearest(centre)
 	type neighbour struct {
 		i int
 		d float64
 	}
-	all := make([]neighbour, len(points))
+	all, y := make([]neighbour, len(points)), make([]float64, d)
 	for i, z := range points {
 		all[i] = neighbour{i, whitened(y, metric, z, centre)}
 	}
-	sort.Slice(all, func(a, b int) bool {
-		return all[a].d < all[b].d || all[a].d == all[b].d && all[a].i < all[b].i
-	})
+	slices.SortFunc(all, func(a, b neighbour) int { return cmp.Or(cmp.Compare(a.d, b.d), a.i-b.i) })
 	all = all[:min(len(all), max(len(points)/20, 10*d))]
-	p := part{mean: append([]float64(nil), centre...), factor: make([]float64, d*d)}
-	total, floor := 0.0, 1/float64(len(points))
-	share := 0.0
+	factor := make([]float64, d*d)
+	total, share, floor := 0.0, 0.0, 1/float64(len(points))
 	for _, n := range all {
 		w := (weights[n.i] + floor) / 2
 		total += w
 		share += weights[n.i]
 		for a := range d {
 			for b := 0; b <= a; b++ {
-				p.factor[a*d+b] += w * (points[n.i][a] - centre[a]) * (points[n.i][b] - centre[b])
+				factor[a*d+b] += w * (points[n.i][a] - centre[a]) * (points[n.i][b] - centre[b])
 			}
 		}
 	}
-	for i := range p.factor {
-		p.factor[i] /= total
+	for i := range factor {
+		factor[i] /= total
 	}
-	if !cholesky(p.factor, d) {
+	if !cholesky(factor, d) {
 		return m
 	}
-	shares := append(append([]float64(nil), m.shares[1:]...), max(share, 0.02))
-	return newMixture(d, m.dof, m.shares[0], shares, append(append([]part(nil), m.parts...), p))
+	mean := append([]float64(nil), centre...)
+	return newMixture(d, m.shares[0], append(slices.Clone(m.shares[1:]), max(share, 0.02)), append(slices.Clone(m.parts), newPart(mean, factor, startDof)))
+}
+
+// nearest returns the factor of the part most probably responsible for z.
+func (m *mixture) nearest(z []float64) []float64 {
+	t := m.newTerms()
+	t.set(m, z)
+	near := 0
+	for k := range m.parts {
+		if max(t.core[k], t.stretched[k]) > max(t.core[near], t.stretched[near]) {
+			near = k
+		}
+	}
+	return m.parts[near].factor
 }

@@ -13,72 +13,126 @@ const defence = 0.05
 // mixture is the proposal: multivariate t distributions and, with weight
 // shares[0], the prior.
 type mixture struct {
-	dim    int
-	dof    float64
-	shares []float64 // 1 + len(parts), summing to 1
-	parts  []part
-	lnNorm float64 // of the t density, without the determinant
+	dim     int
+	shares  []float64 // 1 + len(parts), summing to 1
+	lnShare []float64
+	parts   []part
 }
 
+// part is one component: a multivariate t distribution of which a small share
+// is stretched, so that it also looks around the place it stands for. Without
+// that, a mixture that fits most of a bent or funnel-shaped posterior never
+// proposes the rest, and no weight tells.
 type part struct {
-	mean, factor []float64
-	lnDet        float64
+	mean, factor []float64 // factor is the Cholesky factor of its scale matrix
+	dof          int       // index in dofs
+	lnCore       float64   // ln of share and norm of the plain t
+	lnStretched  float64   // and of the stretched one
 }
 
-func newMixture(dim int, dof float64, defending float64, shares []float64, parts []part) *mixture {
-	m := &mixture{dim: dim, parts: parts, shares: make([]float64, 1+len(parts))}
+// dofs are the degrees of freedom a part may have.
+var dofs = [...]float64{1, 2, 3, 5, 8, 15, 30}
+
+// startDof is the index of the degrees of freedom a part starts with.
+const startDof = 3
+
+const (
+	stretch      = 3.0  // in every direction
+	stretchShare = 0.08 // of a part's proposals
+)
+
+// newPart returns a part; the norm of a t is
+//
+//	Γ((ν+d)/2) / Γ(ν/2) (νπ)^(d/2) |L|.
+func newPart(mean, factor []float64, dof int) part {
+	d := len(mean)
+	norm := lnStudentNorm(dofs[dof], d) - lnDet(factor, d)
+	return part{
+		mean: mean, factor: factor, dof: dof,
+		lnCore:      norm + math.Log(1-stretchShare),
+		lnStretched: norm + math.Log(stretchShare) - float64(d)*math.Log(stretch),
+	}
+}
+
+// both returns the logs of the core's and the stretched share's density at
+// squared distance d2. (1+x loses no digit that matters here, and Log is much
+// faster than Log1p.)
+func (p *part) both(d2 float64) (core, stretched float64) {
+	dof := dofs[p.dof]
+	power := -(dof + float64(len(p.mean))) / 2
+	return p.lnCore + power*math.Log(1+d2/dof), p.lnStretched + power*math.Log(1+d2/(stretch*stretch*dof))
+}
+
+// newMixture builds a mixture of the parts with shares in the given proportion,
+// beside the prior with the share defending or defence, whichever is more.
+func newMixture(dim int, defending float64, shares []float64, parts []part) *mixture {
+	m := &mixture{dim: dim, parts: parts, shares: make([]float64, 1+len(parts)), lnShare: make([]float64, 1+len(parts))}
 	total := 0.0
 	for _, s := range shares {
 		total += s
 	}
 	m.shares[0] = max(defence, defending)
-	if total == 0 {
-		m.shares[0] = 1
-	}
 	for k, s := range shares {
-		m.shares[1+k] = 0
-		if total > 0 {
-			m.shares[1+k] = s / total * (1 - m.shares[0])
-		}
-		m.parts[k].lnDet = lnDet(parts[k].factor, dim)
+		m.shares[1+k] = s / total * (1 - m.shares[0])
 	}
-	m.setDof(dof)
+	for k, s := range m.shares {
+		m.lnShare[k] = math.Log(s)
+	}
 	return m
 }
 
-// setDof sets the degrees of freedom of every t, and with them its norm
-// Γ((ν+d)/2) / Γ(ν/2) (νπ)^(d/2).
-func (m *mixture) setDof(dof float64) {
-	d := float64(m.dim)
+func lnStudentNorm(dof float64, dim int) float64 {
+	d := float64(dim)
 	top, _ := math.Lgamma((dof + d) / 2)
 	bottom, _ := math.Lgamma(dof / 2)
-	m.dof, m.lnNorm = dof, top-bottom-d/2*math.Log(dof*math.Pi)
+	return top - bottom - d/2*math.Log(dof*math.Pi)
 }
 
-// terms sets t[k] to the log of share times density of component k (0 is the
-// prior) and d2[k] to the squared distance from part k; it returns the log of
-// the mixture's density.
-func (m *mixture) terms(t, d2, y, z []float64) float64 {
-	t[0] = math.Log(m.shares[0]) + lnUnitNormal(z)
-	most := t[0]
-	for k, p := range m.parts {
-		d2[k] = whitened(y, p.factor, z, p.mean)
-		t[1+k] = math.Log(m.shares[1+k]) + m.lnNorm - p.lnDet - (m.dof+float64(m.dim))/2*math.Log1p(d2[k]/m.dof)
-		most = max(most, t[1+k])
+// terms is the density of a mixture at one point, taken apart.
+type terms struct {
+	prior, total    float64   // logs: of the prior's share, of the whole
+	core, stretched []float64 // logs, by part
+	d2              []float64 // squared distance from each part
+	y               []float64
+}
+
+func (m *mixture) newTerms() *terms {
+	n := len(m.parts)
+	return &terms{core: make([]float64, n), stretched: make([]float64, n), d2: make([]float64, n), y: make([]float64, m.dim)}
+}
+
+// negligible is how far below the largest term, in logarithms, one is left out.
+const negligible = 40
+
+func (t *terms) set(m *mixture, z []float64) {
+	t.prior = m.lnShare[0] + lnUnitNormal(z)
+	most := t.prior
+	for k := range m.parts {
+		p := &m.parts[k]
+		t.d2[k] = whitened(t.y, p.factor, z, p.mean)
+		core, stretched := p.both(t.d2[k])
+		t.core[k], t.stretched[k] = m.lnShare[1+k]+core, m.lnShare[1+k]+stretched
+		most = max(most, t.core[k], t.stretched[k])
 	}
-	sum := 0.0
-	for _, v := range t {
-		sum += math.Exp(v - most)
+	sum := math.Exp(t.prior - most)
+	for k, core := range t.core {
+		if core > most-negligible {
+			sum += math.Exp(core - most)
+		}
+		if t.stretched[k] > most-negligible {
+			sum += math.Exp(t.stretched[k] - most)
+		}
 	}
-	return most + math.Log(sum)
+	t.total = most + math.Log(sum)
 }
 
 // lnDensity returns the log density of the mixture at each point.
 func (m *mixture) lnDensity(points [][]float64) []float64 {
-	t, d2, y := make([]float64, 1+len(m.parts)), make([]float64, len(m.parts)), make([]float64, m.dim)
+	t := m.newTerms()
 	out := make([]float64, len(points))
 	for i, z := range points {
-		out[i] = m.terms(t, d2, y, z)
+		t.set(m, z)
+		out[i] = t.total
 	}
 	return out
 }
@@ -108,16 +162,25 @@ func (m *mixture) draw(n int, s Stream) [][]float64 {
 				continue
 			}
 			p := m.parts[k-1]
-			unwhitened(points[i], p.factor, y, p.mean, math.Sqrt(m.dof/chiSquare(rng, m.dof)))
+			scale := math.Sqrt(dofs[p.dof] / chiSquare(rng, dofs[p.dof]))
+			if rng.Float64() < stretchShare {
+				scale *= stretch
+			}
+			unwhitened(points[i], p.factor, y, p.mean, scale)
 		}
 	}
 	return points
 }
 
 // chiSquare draws from the chi-square distribution with dof degrees of freedom
-// (Marsaglia & Tsang 2000, for a shape of at least one).
+// (Marsaglia & Tsang 2000; below a shape of one by way of the shape above).
 func chiSquare(rng *rand.Rand, dof float64) float64 {
-	d := dof/2 - 1.0/3
+	shape, boost := dof/2, 1.0
+	if shape < 1 {
+		boost = math.Pow(1-rng.Float64(), 1/shape)
+		shape++
+	}
+	d := shape - 1.0/3
 	c := 1 / math.Sqrt(9*d)
 	for {
 		x := rng.NormFloat64()
@@ -127,7 +190,7 @@ func chiSquare(rng *rand.Rand, dof float64) float64 {
 		}
 		v = v * v * v
 		if math.Log(1-rng.Float64()) < x*x/2+d-d*v+d*math.Log(v) {
-			return 2 * d * v
+			return 2 * d * v * boost
 		}
 	}
 }

@@ -2,7 +2,9 @@ package infer
 
 import (
 	"context"
+	"errors"
 	"math"
+	"slices"
 	"sort"
 
 	"gonum.org/v1/gonum/mat"
@@ -13,6 +15,9 @@ type mode struct {
 	z      []float64
 	logp   float64
 	factor []float64 // Cholesky factor of the covariance
+	// settled is false for a place on a ridge where the search gave up: no
+	// maximum, but a useful start for the mixture.
+	settled bool
 }
 
 // distance is the Mahalanobis distance of z from the mode.
@@ -34,32 +39,33 @@ const (
 // findModes climbs from the surveyed points, the promising and the remote in
 // turn, until the share of the posterior's basins not yet seen is expected to
 // be below one per cent: with w modes after n climbs that share is
-// w(w+1)/n(n−1) (Boender & Rinnooy Kan 1987).
+// w(w+1)/n(n−1) (Boender & Rinnooy Kan 1987). A posterior on which the climbs
+// get nowhere, a long curved ridge, is left to the adaptation after some
+// thousand evaluations.
 func findModes(ctx context.Context, t *target, z [][]float64, logp []float64) ([]mode, error) {
 	order := startOrder(z, logp)
 	var found []mode
-	for n := 0; n < len(order); {
+	stop := t.spent + 1500 + 500*t.dim
+	for n := 0; n < len(order) && t.spent < stop; {
 		batch := make([]*climb, min(climbsAtOnce, len(order)-n))
 		err := t.each(ctx, len(batch), func(w *worker, v *visit, i int) error {
 			from := order[n+i]
-			c := &climb{dim: t.dim, left: 40 * (t.dim + 2), known: found, logp: logp[from]}
+			c := &climb{dim: t.dim, left: t.climbBudget(), known: found, logp: logp[from]}
 			c.z = append(c.z, z[from]...)
 			c.eval = func(z []float64) (float64, error) { return t.logPosterior(w, v, z) }
 			batch[i] = c
+			c.start(identity(t.dim))
 			return c.run()
 		})
 		if err != nil {
 			return nil, err
 		}
 		for _, c := range batch {
-			if c.merged || known(found, c.z) {
-				continue
-			}
-			m, err := t.curvature(ctx, c)
+			m, err := t.settle(ctx, c, found)
 			if err != nil {
 				return nil, err
 			}
-			if !known(found, m.z) {
+			if !c.merged {
 				found = append(found, m)
 			}
 		}
@@ -71,9 +77,11 @@ func findModes(ctx context.Context, t *target, z [][]float64, logp []float64) ([
 	return worthKeeping(found), nil
 }
 
-func known(found []mode, z []float64) bool {
+// alreadyFound reports whether z, where the log posterior is logp, lies within
+// two standard deviations of a known mode and no higher than it.
+func alreadyFound(found []mode, z []float64, logp float64) bool {
 	for _, m := range found {
-		if m.distance(z) < 2 {
+		if logp < m.logp+0.5 && m.distance(z) < 2 {
 			return true
 		}
 	}
@@ -90,6 +98,17 @@ func worthKeeping(found []mode) []mode {
 		}
 	}
 	return found
+}
+
+// settled counts the modes that are maxima, at least one.
+func settled(modes []mode) int {
+	n := 0
+	for _, m := range modes {
+		if m.settled {
+			n++
+		}
+	}
+	return max(1, n)
 }
 
 // startOrder ranks the surveyed points: the best, then by turns the one
@@ -134,24 +153,40 @@ func startOrder(z [][]float64, logp []float64) []int {
 	return order
 }
 
-// curvature fits a normal distribution at the end of a climb. It measures
-// second differences along directions that the climb left conjugate, each with
-// a step over which logp falls by about a half, so that it sees the posterior
-// at its own scale and not the rounding of the likelihood.
-func (t *target) curvature(ctx context.Context, c *climb) (mode, error) {
-	var m mode
-	err := t.each(ctx, 1, func(w *worker, v *visit, _ int) error {
-		p := &probe{dim: t.dim, centre: c.z, logp: c.logp, eval: func(z []float64) (float64, error) { return t.logPosterior(w, v, z) }}
-		p.basis = append(p.basis, c.inverse...)
-		if !cholesky(p.basis, t.dim) {
-			p.basis = identity(t.dim)
+// settle finishes a climb: it fits a normal distribution where the climb ended
+// and, while that shows that the top is still some way off, climbs on with the
+// directions and scales so learnt. c.merged says that the climb reached a mode
+// found before.
+func (t *target) settle(ctx context.Context, c *climb, found []mode) (m mode, err error) {
+	err = t.each(ctx, 1, func(w *worker, v *visit, _ int) error {
+		c.eval = func(z []float64) (float64, error) { return t.logPosterior(w, v, z) }
+		c.known = found
+		for try := 0; try < 3; try++ {
+			if c.merged = c.merged || alreadyFound(found, c.z, c.logp); c.merged {
+				return nil
+			}
+			p := &probe{dim: t.dim, centre: c.z, logp: c.logp, eval: c.eval, basis: slices.Clone(c.factor)}
+			var err error
+			if m, err = p.fit(); err != nil {
+				return err
+			}
+			if m.settled = m.logp < c.logp+0.1; m.settled {
+				break
+			}
+			c.z, c.logp, c.left = slices.Clone(m.z), m.logp, t.climbBudget()
+			c.start(m.factor)
+			if err := c.run(); err != nil {
+				return err
+			}
 		}
-		var err error
-		m, err = p.fit()
-		return err
+		c.merged = alreadyFound(found, m.z, m.logp)
+		return nil
 	})
 	return m, err
 }
+
+// climbBudget is the number of evaluations one climb may spend.
+func (t *target) climbBudget() int { return 40 * (t.dim + 2) }
 
 // probe measures the curvature at one point.
 type probe struct {
@@ -160,6 +195,9 @@ type probe struct {
 	centre []float64
 	logp   float64
 	basis  []float64 // columns are the directions; scaled to unit curvature by fit
+
+	best    []float64 // highest point visited
+	bestLog float64
 }
 
 func (p *probe) at(i int, hi float64, j int, hj float64) (float64, error) {
@@ -170,11 +208,20 @@ func (p *probe) at(i int, hi float64, j int, hj float64) (float64, error) {
 			z[k] += hj * p.basis[k*p.dim+j]
 		}
 	}
-	return p.eval(z)
+	return p.visit(z)
+}
+
+func (p *probe) visit(z []float64) (float64, error) {
+	l, err := p.eval(z)
+	if err == nil && l > p.bestLog {
+		p.best, p.bestLog = z, l
+	}
+	return l, err
 }
 
 func (p *probe) fit() (mode, error) {
 	d := p.dim
+	p.best, p.bestLog = p.centre, p.logp
 	slope := make([]float64, d)
 	for i := range d {
 		if err := p.scale(i, &slope[i]); err != nil {
@@ -202,7 +249,7 @@ func (p *probe) fit() (mode, error) {
 	}
 	var eigen mat.EigenSym
 	if !eigen.Factorize(hess, true) {
-		return mode{}, nil
+		return mode{}, errors.New("infer: the curvature at a mode could not be found")
 	}
 	values := eigen.Values(nil)
 	var vectors mat.Dense
@@ -226,7 +273,14 @@ func (p *probe) fit() (mode, error) {
 			step[r] += sum * max(min(along/lambda, 1), -1)
 		}
 	}
-	m := mode{z: append([]float64(nil), p.centre...), logp: p.logp, factor: make([]float64, d*d)}
+	moved := make([]float64, d)
+	for r := range d {
+		moved[r] = p.centre[r] + step[r]
+	}
+	if _, err := p.visit(moved); err != nil {
+		return mode{}, err
+	}
+	m := mode{z: slices.Clone(p.best), logp: p.bestLog, factor: make([]float64, d*d)}
 	for r := range d {
 		for c := range d {
 			m.factor[r*d+c] = dot(root[r*d:(r+1)*d], root[c*d:(c+1)*d])
@@ -235,15 +289,7 @@ func (p *probe) fit() (mode, error) {
 	if !cholesky(m.factor, d) {
 		m.factor = identity(d)
 	}
-	moved := make([]float64, d)
-	for r := range d {
-		moved[r] = p.centre[r] + step[r]
-	}
-	l, err := p.eval(moved)
-	if err == nil && l > m.logp {
-		m.z, m.logp = moved, l
-	}
-	return m, err
+	return m, nil
 }
 
 // scale stretches direction i until one step of it lowers logp by about ½ on

@@ -1,8 +1,10 @@
 package infer
 
 import (
+	"cmp"
 	"math"
 	"math/rand/v2"
+	"slices"
 )
 
 // normalised turns log weights into weights that sum to one, and returns ln of
@@ -43,30 +45,60 @@ func kish(w []float64) float64 {
 // taken ⌊n w_i⌋ or ⌈n w_i⌉ times. The picks are shuffled, for draws are paired
 // by index elsewhere.
 //
-// effective is the size of the picks, n²/Σ c_i² for counts c_i, with the
-// expectation of c_i² over the random offset,
-//
-//	1/effective = Σ w_i² + Σ r_i (1 − r_i) / n²,  r_i = n w_i − ⌊n w_i⌋,
-//
-// so it counts the uneven weights and the resampling both.
-func resample(w []float64, n int, rng *rand.Rand) (picks []int, effective float64) {
-	u := rng.Float64()
-	sum, inverse := 0.0, 0.0
+// squares[i] is the expectation, over the random offset, of (c_i/n)² for its
+// count c_i: w_i² + r_i (1 − r_i)/n² with r_i = n w_i − ⌊n w_i⌋. It holds the
+// uneven weights and the resampling both.
+func resample(w []float64, n int, rng *rand.Rand) (picks []int, squares []float64) {
+	u, sum := rng.Float64(), 0.0
+	squares = make([]float64, len(w))
+	last := 0
 	for i, v := range w {
 		sum += v
 		for len(picks) < n && u+float64(len(picks)) < sum*float64(n) {
-			picks = append(picks, i)
+			picks, last = append(picks, i), i
 		}
 		r := v * float64(n)
 		r -= math.Floor(r)
-		inverse += v*v + r*(1-r)/float64(n)/float64(n)
+		squares[i] = v*v + r*(1-r)/float64(n)/float64(n)
 	}
-	for last := len(w) - 1; len(picks) < n; { // rounding in the sum
-		for w[last] == 0 {
-			last--
-		}
+	for len(picks) < n { // the sum fell short of one by rounding
 		picks = append(picks, last)
 	}
 	rng.Shuffle(n, func(i, j int) { picks[i], picks[j] = picks[j], picks[i] })
-	return picks, 1 / inverse
+	return picks, squares
+}
+
+// effectiveDraws is the number of independent draws that would know the
+// percentiles as well as draws with the given expected squared shares do:
+//
+//	p (1 − p) / Σ_i squares_i (1[x_i < q] − p)²,
+//
+// the worst over all coordinates and over the 2.5, 16, 50, 84 and 97.5
+// percentiles q.
+func effectiveDraws(z [][]float64, w, squares []float64) float64 {
+	total := 0.0
+	for _, v := range squares {
+		total += v
+	}
+	order := make([]int, 0, len(w))
+	for i, v := range w {
+		if v > 0 {
+			order = append(order, i)
+		}
+	}
+	worst := math.Inf(1)
+	for j := range z[0] {
+		slices.SortFunc(order, func(a, b int) int { return cmp.Or(cmp.Compare(z[a][j], z[b][j]), a-b) })
+		below, share, next := 0.0, 0.0, 0
+		for _, p := range [...]float64{0.025, 0.16, 0.5, 0.84, 0.975} {
+			for next < len(order) && share+w[order[next]] <= p {
+				below += squares[order[next]]
+				share += w[order[next]]
+				next++
+			}
+			variance := below*(1-p)*(1-p) + (total-below)*p*p
+			worst = min(worst, p*(1-p)/variance)
+		}
+	}
+	return worst
 }

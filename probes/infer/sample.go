@@ -30,43 +30,103 @@ func DrawPosterior(ctx context.Context, p Problem, o Options) (*Sample, error) {
 	}
 	var c cloud
 	c.add(z, logp, priorDensity)
-	m, err := t.adapt(ctx, startMixture(t.dim, modes), &c, o.Stream.Sub("adapt"))
+	var f *final
+	for attempt := 1; attempt <= mostAttempts; attempt++ {
+		work := o.Stream.Sub(fmt.Sprintf("attempt %d", attempt))
+		m, efficiency, err := t.adapt(ctx, startMixture(t.dim, modes), &c, work)
+		if err != nil {
+			return nil, err
+		}
+		// The mixture is frozen from here.
+		if f, err = t.propose(ctx, m, proposals(o.Draws, efficiency), work.Sub("final")); err != nil {
+			return nil, err
+		}
+		if f.passes() && f.shape < heavyRound {
+			break
+		}
+		c.add(f.z, f.logp, m.lnDensity)
+	}
+	if f.passes() {
+		return t.importanceSample(f, o.Draws, modes, o.Stream.Sub("resample")), nil
+	}
+	s, err := t.ensembleSample(ctx, modes, o.Draws, o.Stream)
 	if err != nil {
 		return nil, err
 	}
-	// Frozen from here.
-	proposals := 3 * o.Draws
-	z = m.draw(proposals, o.Stream.Sub("final"))
-	if logp, err = t.evaluate(ctx, z); err != nil {
+	s.Warnings = append([]string{fmt.Sprintf(
+		"importance sampling did not settle (tail shape %.2f, efficiency %.3f): the draws come from an affine-invariant ensemble and carry no evidence",
+		f.shape, f.efficiency())}, s.Warnings...)
+	return s, nil
+}
+
+const (
+	mostAttempts   = 3
+	mostTailShape  = 0.7
+	leastEfficient = 0.1
+)
+
+// proposals is how many points are drawn from a frozen mixture of the given
+// efficiency for n draws: three times as many when it is good, up to ten.
+func proposals(n int, efficiency float64) int {
+	return n * int(min(max(math.Ceil(2/efficiency), 3), 10))
+}
+
+// final is a set of proposals from a frozen mixture with its weights.
+type final struct {
+	z     [][]float64
+	logp  []float64
+	w     []float64 // smoothed, summing to one
+	lnZ   float64
+	shape float64
+}
+
+func (t *target) propose(ctx context.Context, m *mixture, n int, s Stream) (*final, error) {
+	f := &final{z: m.draw(n, s)}
+	var err error
+	if f.logp, err = t.evaluate(ctx, f.z); err != nil {
 		return nil, err
 	}
-	lnW := m.lnDensity(z)
+	lnW := m.lnDensity(f.z)
 	for i := range lnW {
-		lnW[i] = logp[i] - lnW[i]
+		lnW[i] = f.logp[i] - lnW[i]
 	}
-	shape := smooth(lnW)
-	w, lnZ := normalised(lnW)
-	if math.IsInf(lnZ, -1) {
-		return nil, fmt.Errorf("infer: none of %d proposals is a possible model", proposals)
+	f.shape = smooth(lnW)
+	f.w, f.lnZ = normalised(lnW)
+	if math.IsInf(f.lnZ, -1) {
+		return nil, fmt.Errorf("infer: none of %d proposals is a possible model", n)
 	}
-	picks, effective := resample(w, o.Draws, o.Stream.Sub("resample").Rand(0))
-	s := &Sample{Values: rows(o.Draws, t.dim), Best: t.best, BestLog: t.bestLog}
+	return f, nil
+}
+
+func (f *final) efficiency() float64 { return kish(f.w) / float64(len(f.w)) }
+
+func (f *final) passes() bool {
+	return f.shape <= mostTailShape && f.efficiency() >= leastEfficient
+}
+
+// importanceSample turns proposals that pass into equally weighted draws.
+func (t *target) importanceSample(f *final, n int, modes []mode, stream Stream) *Sample {
+	picks, squares := resample(f.w, n, stream.Rand(0))
+	s := t.physical(f.z, picks)
+	s.Quality = Quality{
+		Converged: true, Sampler: "importance", EffectiveDraws: effectiveDraws(f.z, f.w, squares), Evaluations: t.spent,
+		Modes: settled(modes), LogEvidence: f.lnZ, EvidenceError: math.Sqrt(max(0, 1/kish(f.w)-1/float64(len(f.w)))), HasEvidence: true, PValue: 1,
+	}
+	if !math.IsInf(f.shape, 0) {
+		s.Quality.TailShape = f.shape
+	}
+	return s
+}
+
+// physical maps the picked points from prior scores to parameter values.
+func (t *target) physical(z [][]float64, picks []int) *Sample {
+	s := &Sample{Values: rows(len(picks), t.dim), Best: t.best, BestLog: t.bestLog}
 	for i, pick := range picks {
-		for j, f := range t.free {
-			s.Values[i][j] = f.Prior.FromScore(z[pick][j])
+		for j, p := range t.free {
+			s.Values[i][j] = p.Prior.FromScore(z[pick][j])
 		}
 	}
-	s.Quality = Quality{
-		Converged: shape <= 0.7, Sampler: "importance", EffectiveDraws: effective, Evaluations: t.spent,
-		Modes: len(modes), LogEvidence: lnZ, HasEvidence: true, PValue: 1,
-	}
-	if !math.IsInf(shape, 0) {
-		s.Quality.TailShape = shape
-	}
-	if !s.Quality.Converged {
-		s.Warnings = append(s.Warnings, fmt.Sprintf("the draws have not converged: the importance weights have a heavy tail (k = %.2f, above 0.7)", shape))
-	}
-	return s, nil
+	return s
 }
 
 // startMixture proposes from every mode, half by its mass and half alike.
@@ -74,8 +134,8 @@ func startMixture(dim int, modes []mode) *mixture {
 	var parts []part
 	var shares []float64
 	for _, m := range modes {
-		parts = append(parts, part{mean: m.z, factor: m.factor})
+		parts = append(parts, newPart(m.z, m.factor, startDof))
 		shares = append(shares, math.Exp(m.lnMass()-modes[0].lnMass())+1)
 	}
-	return newMixture(dim, 5, defence, shares, parts)
+	return newMixture(dim, defence, shares, parts)
 }

@@ -12,7 +12,7 @@ import (
 
 const (
 	fewStarts  = 64
-	mostStarts = 4096
+	mostStarts = 32768
 )
 
 // starts returns n points that fill the prior evenly: the additive recurrence
