@@ -312,7 +312,11 @@
 // radius(length). With overdensities radii_from must say whose radii are meant:
 // an estimate, at whose median radius then every estimate is read, or "own", with
 // which each is read at its own. limits, [2, 3, 5] when silent, are the sigmas
-// that part consistent, strained, in tension and incompatible.
+// that part consistent, strained, in tension and incompatible. Of several
+// estimates made from the same data one enters the agreement and the combined
+// mass: the first, or the one that preferred lists. combined, "linear" when
+// silent, says which combined mass goes into tables; "random-effects" allows for
+// scatter beyond the errors.
 //
 //	reconcile {
 //	  estimates  = [xray.spectra.backward, lensing.shapes.nfw, dynamics.redshifts.scaling]

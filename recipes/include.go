@@ -102,7 +102,7 @@ func (l *loader) includes(s *source) []term {
 var homeOf = map[string]string{
 	"redshift": "object", "centre": "object", "hubble_constant": "cosmology", "omega_matter": "cosmology", "omega_lambda": "cosmology",
 	"w0": "cosmology", "wa": "cosmology", "cmb_temperature": "cosmology", "draws": "sampling", "seed": "sampling",
-	"estimates": "reconcile", "at": "reconcile", "radii_from": "reconcile", "limits": "reconcile",
+	"estimates": "reconcile", "at": "reconcile", "radii_from": "reconcile", "limits": "reconcile", "preferred": "reconcile", "combined": "reconcile",
 }
 
 // merged returns the blocks that stand for a recipe: its own, then those of its

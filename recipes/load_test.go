@@ -163,7 +163,7 @@ func TestWhole(t *testing.T) {
 			{Delta: 500, Of: "critical", Text: "overdensity 500"},
 			{Radius: 1000, Unit: "kpc", Text: "radius 1 Mpc"},
 		},
-		RadiiFrom: "lensing.shapes.nfw", Limits: []float64{2, 3, 5},
+		RadiiFrom: "lensing.shapes.nfw", Limits: []float64{2, 3, 5}, Combined: "linear",
 	}
 	if diff := cmp.Diff(wantReconcile, r.Reconcile, cmpopts.IgnoreTypes(hcl.Range{})); diff != "" {
 		t.Error(diff)

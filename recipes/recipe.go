@@ -115,6 +115,8 @@ type Reconcile struct {
 	At        []At
 	RadiiFrom string    // full name of an estimate, "own", or "" when not needed
 	Limits    []float64 // sigmas at which the verdict changes its word, rising
+	Preferred []string  // of estimates made from the same data, those that enter the agreement
+	Combined  string    // "linear" or "random-effects": the combined mass that goes into tables
 	Range     hcl.Range
 }
 

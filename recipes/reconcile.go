@@ -12,9 +12,9 @@ import (
 
 // reconcile reads which estimates are compared, and where.
 func (l *loader) reconcile(b *hclsyntax.Block) {
-	out := &Reconcile{Limits: []float64{2, 3, 5}, Range: b.DefRange()}
+	out := &Reconcile{Limits: []float64{2, 3, 5}, Combined: combinedSetting.Default.Text, Range: b.DefRange()}
 	l.recipe.Reconcile = out
-	l.check(b.Body, vocabulary{block: "reconcile", settings: []string{"estimates", "at", "radii_from", "limits"}})
+	l.check(b.Body, vocabulary{block: "reconcile", settings: []string{"estimates", "at", "radii_from", "limits", "preferred", combinedSetting.Name}})
 	if l.require(b.Body, b.DefRange(), "reconcile", "estimates", "They are the masses to compare.", "Write estimates = [lensing.shapes.nfw, …].") {
 		t, _ := l.attribute(b.Body, "estimates")
 		out.Estimates = l.estimateList(t)
@@ -42,6 +42,50 @@ func (l *loader) reconcile(b *hclsyntax.Block) {
 	if t, given := l.attribute(b.Body, "limits"); given {
 		out.Limits = l.limits(t)
 	}
+	if t, given := l.attribute(b.Body, "preferred"); given {
+		out.Preferred = l.preferred(t, out.Estimates)
+	}
+	if t, given := l.attribute(b.Body, combinedSetting.Name); given {
+		if v, ok := l.value(t, combinedSetting); ok {
+			out.Combined = v.Text
+		}
+	}
+}
+
+// combinedSetting says which combined mass goes into tables.
+var combinedSetting = method.Setting{Name: "combined", Kind: method.Choice, Choices: []string{"linear", "random-effects"}, Default: method.Word("linear")}
+
+// preferred reads which of several estimates made from the same data enter the
+// agreement and the combination.
+func (l *loader) preferred(t term, compared []string) (names []string) {
+	if t.kind == badTerm {
+		return nil
+	}
+	if t.kind != listTerm {
+		l.add(problem{at: t.at, what: "preferred is a list of references", write: "Write preferred = [dynamics.redshifts.jeans]."})
+		return nil
+	}
+	for _, item := range t.items {
+		name, ok := l.estimateName(item)
+		switch {
+		case !ok:
+		case !slices.Contains(compared, name):
+			l.add(problem{at: item.at, what: fmt.Sprintf("%s is preferred but not compared", name), write: "Add it to estimates, or leave it out here."})
+		case slices.ContainsFunc(names, func(other string) bool { return blockOf(other) == blockOf(name) }):
+			l.add(problem{at: item.at, what: fmt.Sprintf("two estimates of %s are preferred", blockOf(name)), why: "They are made from the same data, so one of them enters.", write: "Keep one."})
+		default:
+			names = append(names, name)
+		}
+	}
+	return names
+}
+
+// blockOf is the block that an estimate belongs to: of a probe, or its own.
+func blockOf(estimate string) string {
+	if strings.HasPrefix(estimate, "reported.") {
+		return estimate
+	}
+	return estimate[:strings.LastIndex(estimate, ".")]
 }
 
 // estimateList reads references to the estimates to compare.

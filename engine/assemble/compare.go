@@ -115,7 +115,7 @@ func (p *Plan) limits() [3]float64 {
 func (p *Plan) setup() reconcile.Setup {
 	c := p.Recipe.Reconcile
 	s := reconcile.Setup{
-		RadiiFrom: c.RadiiFrom, Own: p.definitions(),
+		RadiiFrom: c.RadiiFrom, Preferred: c.Preferred, Own: p.definitions(),
 		Background: reconcile.Background{Cosmology: p.background, Redshift: p.object.Redshift},
 	}
 	for _, at := range c.At {

@@ -145,3 +145,27 @@ func TestWhatTheVerdictIsGiven(t *testing.T) {
 		t.Errorf("given %q", given)
 	}
 }
+
+// Two estimates of one dispersion show a spread of methods, and the preferred one
+// alone is evidence.
+func TestSameDataIsOneEvidence(t *testing.T) {
+	recipe := fmt.Sprintf(fastAndSlow, "", "1")
+	recipe = strings.Replace(recipe, `  estimate "s" {`, `  estimate "t" {
+    method            = "dispersion-scaling"
+    relation          = "munari-2013"
+    tracer            = "galaxies"
+    intrinsic_scatter = 0
+  }
+  estimate "s" {`, 1)
+	recipe = strings.Replace(recipe, "[dynamics.quoted.s, reported.light]", "[dynamics.quoted.s, dynamics.quoted.t, reported.light]\n  preferred  = [dynamics.quoted.t]\n  combined   = \"random-effects\"", 1)
+	w := rounds(t, plan(t, recipe, nil), Ask{})
+	if len(w.Tensions) != 2 || len(w.Spreads) != 1 {
+		t.Fatalf("%d tensions, %d spreads", len(w.Tensions), len(w.Spreads))
+	}
+	if of := strings.Join(w.Consistency[0].Of, " "); of != "dynamics.quoted.t reported.light" {
+		t.Errorf("the agreement is of %s", of)
+	}
+	if _, ok := w.Combined[0].Weights["dynamics.quoted.s"]; ok || w.CombinedBy != "random-effects" {
+		t.Errorf("combined by %s: %+v", w.CombinedBy, w.Combined)
+	}
+}

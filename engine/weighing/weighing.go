@@ -30,6 +30,7 @@ type Weighing struct {
 	Spreads     []Spread      `json:"method_spread,omitempty"`
 	Consistency []Consistency `json:"consistency,omitempty"`
 	Combined    []Combined    `json:"combined,omitempty"`
+	CombinedBy  string        `json:"combined_by,omitempty"` // what goes into tables: "linear" or "random-effects"
 	Whole       *Whole        `json:"combined_profile,omitempty"`
 	Levers      []Lever       `json:"levers,omitempty"`
 	Warnings    []string      `json:"warnings,omitempty"` // of the comparison

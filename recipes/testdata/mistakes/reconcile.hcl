@@ -13,4 +13,6 @@ dynamics "sigma" {
 reconcile {
   estimates = [dynamics.sigma.scaling]
   at        = [overdensity(500)]
+  preferred = [reported.earlier, dynamics.sigma.scaling, dynamics.sigma.scaling, dynamics.sigma]
+  combined  = "random"
 }
