@@ -10,7 +10,7 @@ import (
 const (
 	ensembles   = 4    // independent ones, for R̂
 	firstSweeps = 400  // of every ensemble; the first half is forgotten
-	mostSweeps  = 6400 // the number doubles up to this
+	mostSweeps  = 3200 // the number doubles up to this
 	wantedRHat  = 1.01
 	wantedESS   = 400 // a hundred for each ensemble (Vehtari et al. 2021)
 )

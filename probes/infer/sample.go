@@ -16,6 +16,9 @@ func DrawPosterior(ctx context.Context, p Problem, o Options) (*Sample, error) {
 	if o.Draws == 0 {
 		o.Draws = defaultDraws
 	}
+	if o.Draws < 0 {
+		return nil, fmt.Errorf("infer: %d draws are asked for", o.Draws)
+	}
 	t, err := newTarget(p, o.Workers)
 	if err != nil {
 		return nil, err
@@ -61,14 +64,16 @@ func DrawPosterior(ctx context.Context, p Problem, o Options) (*Sample, error) {
 
 const (
 	mostAttempts   = 3
-	mostTailShape  = 0.7
-	leastEfficient = 0.1
+	mostTailShape  = 0.7 // of weights that can be used (Vehtari et al. 2024)
+	leastEfficient = 0.1 // effective size over size of the final proposals
+	fewestDraws    = 500
 )
 
 // proposals is how many points are drawn from a frozen mixture of the given
-// efficiency for n draws: three times as many when it is good, up to ten.
+// efficiency for n draws: three times as many when it is good, up to ten, and
+// never so few that the tail of the weights could not be judged.
 func proposals(n int, efficiency float64) int {
-	return n * int(min(max(math.Ceil(2/efficiency), 3), 10))
+	return max(n, fewestDraws) * int(min(max(math.Ceil(2/efficiency), 3), 10))
 }
 
 // final is a set of proposals from a frozen mixture with its weights.
@@ -92,9 +97,6 @@ func (t *target) propose(ctx context.Context, m *mixture, n int, s Stream) (*fin
 	}
 	f.shape = smooth(lnW)
 	f.w, f.lnZ = normalised(lnW)
-	if math.IsInf(f.lnZ, -1) {
-		return nil, fmt.Errorf("infer: none of %d proposals is a possible model", n)
-	}
 	return f, nil
 }
 

@@ -78,7 +78,7 @@ func startLikelihood(p Problem) (l func([]float64) float64, err error) {
 func (t *target) logPosterior(w *worker, v *visit, z []float64) (float64, error) {
 	lnPrior := lnUnitNormal(z)
 	for j, s := range z {
-		if math.Abs(s) > farthest {
+		if !(math.Abs(s) <= farthest) {
 			return math.Inf(-1), nil
 		}
 		w.theta[j] = t.free[j].Prior.FromScore(s)
