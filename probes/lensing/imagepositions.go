@@ -70,6 +70,7 @@ var imagePositions = estimate.Method{
 			"The potential is elliptical, not the mass: above an ellipticity of 0.25 the surface density has a waist, and 0.3 is refused. The mass inside a circle is that of the round halo to second order in the ellipticity.",
 			"Models of clusters seldom reach the astrometric error: without `position_scatter` a poor fit has errors that are too small.",
 			"Images that the model makes and nobody saw are not counted against it.",
+			"A prior on `position_scatter`, and components of drawn dispersion, make the posterior long and curved: the draws can then take minutes.",
 			"A component beside the centre counts in the sphere of radius r with its mass inside r less its distance on the sky.",
 		},
 	},
