@@ -42,16 +42,27 @@ func BenchmarkExampleUnchanged(b *testing.B) {
 	benchmarkWeigh(b, func() string { return store })
 }
 
-// BenchmarkExampleUnchangedProcess weighs the example again, process start
-// included.
-func BenchmarkExampleUnchangedProcess(b *testing.B) {
-	store, recipe := b.TempDir(), filepath.Join(example, "recipe.hcl")
-	run(context.Background(), []string{"weigh", "--quiet", "--cache", store, recipe}, io.Discard, io.Discard)
+func benchmarkProcess(b *testing.B, args ...string) {
+	b.Helper()
 	for b.Loop() {
-		cmd := exec.Command(os.Args[0], "weigh", "--quiet", "--cache", store, recipe)
+		cmd := exec.Command(os.Args[0], args...)
 		cmd.Env = append(os.Environ(), asProgram+"=1")
 		if err := cmd.Run(); err != nil {
 			b.Fatal(err)
 		}
 	}
+}
+
+// BenchmarkExampleUnchangedProcess weighs the example again, process start
+// included.
+func BenchmarkExampleUnchangedProcess(b *testing.B) {
+	store, recipe := b.TempDir(), filepath.Join(example, "recipe.hcl")
+	run(context.Background(), []string{"weigh", "--quiet", "--cache", store, recipe}, io.Discard, io.Discard)
+	benchmarkProcess(b, "weigh", "--quiet", "--cache", store, recipe)
+}
+
+// BenchmarkProcessStart only prints the version: what the one above takes beyond
+// this is the work.
+func BenchmarkProcessStart(b *testing.B) {
+	benchmarkProcess(b, "--version")
 }
