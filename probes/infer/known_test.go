@@ -39,6 +39,8 @@ func plain(l func(x []float64) float64) func() func([]float64) float64 {
 	return func() func([]float64) float64 { return l }
 }
 
+var uniform40 = must(prior.Uniform(-40, 40))
+
 func phi(x float64) float64 { return math.Erfc(-x/math.Sqrt2) / 2 }
 
 func lnNormal(x, sd float64) float64 { return -x*x/sd/sd/2 - math.Log(sd) - lnRoot2Pi }
