@@ -42,6 +42,7 @@ or a data file changes, until an interrupt.`,
 	}
 	c.Flags().Float64Var(&failAbove, "fail-above", 0, "exit with status 3 when any tension exceeds this many sigma")
 	c.Flags().BoolVar(&o.ask.Levers, "levers", false, "ask what would bring the worst pair to 1σ also where the verdict is consistent")
+	c.Flags().BoolVar(&o.ask.Sensitivity, "sensitivity", false, "weigh also without the innermost and outermost bins, and with the cut for members moved")
 	c.Flags().BoolVar(&watch, "watch", false, "weigh again whenever a recipe or its data change")
 	return c
 }

@@ -177,7 +177,9 @@ func (p *Plan) estimateNode(full string, m estimate.Method, pr estimate.Probe, b
 			if err != nil {
 				return engine.Output{}, err
 			}
-			t.Reduced[strings.TrimSuffix(strings.TrimPrefix(id, full+"."), ".reduced")] = reduced
+			// Of a reduction that was made otherwise, how stands behind its name.
+			name, _, _ := strings.Cut(strings.TrimPrefix(id, full+"."), ".reduced")
+			t.Reduced[name] = reduced
 		}
 		t.Sampling = p.sampling(&n, job)
 		draws, err := m.Run(ctx, &t)

@@ -44,6 +44,9 @@ func (p *Plan) Fill(ctx context.Context, o Outcome) (*weighing.Weighing, error) 
 	}
 	w.Tensions, w.Profiles, w.Spreads = compared.Tensions, compared.Profiles, compared.Spreads
 	w.Consistency, w.Combined, w.Whole, w.Warnings = compared.Consistency, compared.Combined, compared.Whole, compared.Warnings
+	if err := p.sensitivities(ctx, o, w); err != nil {
+		return nil, err
+	}
 	if len(w.Combined) > 0 {
 		w.CombinedBy = p.Recipe.Reconcile.Combined
 	}

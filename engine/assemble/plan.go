@@ -24,6 +24,8 @@ type Plan struct {
 	suffix      string // of the comparison that holds
 	levers      *levers
 	leverRounds int
+	sensed      bool            // whether less data were tried
+	ranges      []string        // nodes that tell what that changes
 	trials      map[string]bool // nodes that may fail: an estimate that an assumption makes impossible
 }
 

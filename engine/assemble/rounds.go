@@ -9,7 +9,8 @@ import (
 
 // Ask says what is wanted beyond what a recipe asks for itself.
 type Ask struct {
-	Levers bool // also where no pair is strained, as long as one is above 1σ
+	Levers      bool // also where no pair is strained, as long as one is above 1σ
+	Sensitivity bool // how the masses change with less data
 }
 
 // Round plans the further nodes that the outcome so far calls for: estimates made
@@ -17,7 +18,23 @@ type Ask struct {
 // disagreement, two rounds of each at most. The nodes are added to the plan; the
 // graph of the plan is then run again. false when nothing is left to do.
 func (p *Plan) Round(ctx context.Context, o Outcome, ask Ask) (more bool, err error) {
-	if p.Recipe.Reconcile == nil || !finished(o, tensionNode+p.suffix) {
+	compared := p.Recipe.Reconcile != nil && finished(o, tensionNode+p.suffix)
+	if ask.Sensitivity && !p.sensed {
+		p.sensed = true
+		var c comparison
+		if compared {
+			if err := read(ctx, o, tensionNode+p.suffix, &c); err != nil {
+				return false, err
+			}
+		}
+		nodes, err := p.sensitivityNodes(ctx, o, &c)
+		if err != nil {
+			return false, err
+		}
+		p.Nodes = append(p.Nodes, nodes...)
+		return true, nil
+	}
+	if !compared {
 		return false, nil
 	}
 	var nodes []engine.Node

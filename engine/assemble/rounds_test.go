@@ -4,12 +4,14 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 	"testing"
 
 	"steelyard/cache"
 	"steelyard/engine"
 	"steelyard/engine/weighing"
+	"steelyard/probes/catalogue"
 )
 
 // rounds weighs a plan with everything its outcome calls for.
@@ -168,4 +170,70 @@ func TestSameDataIsOneEvidence(t *testing.T) {
 	if _, ok := w.Combined[0].Weights["dynamics.quoted.s"]; ok || w.CombinedBy != "random-effects" {
 		t.Errorf("combined by %s: %+v", w.CombinedBy, w.Combined)
 	}
+}
+
+// Leaving a bin out leaves it out: the innermost and the outermost row of a table,
+// whatever the order of the file.
+func TestWithoutRow(t *testing.T) {
+	table := &catalogue.Table{Rows: []int{1, 2, 3}, Columns: []catalogue.Column{{Name: "outer", Unit: "kpc", Values: []float64{300, 100, 200}}}}
+	for _, c := range []struct {
+		outermost bool
+		want      []float64
+	}{{false, []float64{300, 200}}, {true, []float64{100, 200}}} {
+		short, err := withoutRow(table, c.outermost)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if got := short.Values("outer"); !slices.Equal(got, c.want) {
+			t.Errorf("outermost %t leaves %v, want %v", c.outermost, got, c.want)
+		}
+	}
+	if _, err := withoutRow(table.Pick([]int{0}), true); err == nil {
+		t.Error("the only bin was left out")
+	}
+}
+
+// The cut that makes members is moved both ways, and what it changes is told at
+// every place.
+func TestSensitivityToTheEnd(t *testing.T) {
+	recipe := strings.Replace(ground, "draws = 400", "draws = 200", 1) + `
+dynamics "d" {
+  galaxies {
+    file     = "galaxies.csv"
+    ra       = column("ra", "deg")
+    dec      = column("dec", "deg")
+    redshift = column("z")
+  }
+  members {
+    method = "sigma-clip"
+    clip   = 2.4
+  }
+  estimate "s" { method = "dispersion-scaling" }
+}`
+	w := rounds(t, plan(t, recipe, map[string]string{"galaxies.csv": bell()}), Ask{Sensitivity: true})
+	var changes []string
+	for _, s := range w.Sensitivity {
+		changes = append(changes, s.Change)
+		if s.Estimate != "dynamics.d.s" || s.At != "overdensity 500" || !(s.Mass.Median > 0) {
+			t.Errorf("%+v", s)
+		}
+	}
+	if want := []string{"with the members' clip at 2", "with the members' clip at 2.88"}; !slices.Equal(changes, want) {
+		t.Fatalf("changes %q, want %q; warnings %q, failures %v", changes, want, w.Warnings, w.Failures)
+	}
+	if !(w.Sensitivity[0].LnChange < w.Sensitivity[1].LnChange) {
+		t.Errorf("a narrower cut gives %.3f, a wider %.3f in ln M", w.Sensitivity[0].LnChange, w.Sensitivity[1].LnChange)
+	}
+}
+
+// bell is a table of eighty galaxies whose velocities are those of a normal law,
+// with a few far from it.
+func bell() string {
+	var b strings.Builder
+	b.WriteString("ra,dec,z\n")
+	for i := range 80 {
+		u := (float64(i*37%80) + 0.5) / 80
+		fmt.Fprintf(&b, "150.0,%.6f,%.6f\n", 2+float64(i)/400, 0.1+0.0025*math.Log(u/(1-u)))
+	}
+	return b.String()
 }

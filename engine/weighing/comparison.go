@@ -101,3 +101,14 @@ type Lever struct {
 	Interpolated bool     `json:"interpolated,omitempty"` // between trials, not run itself
 	Cannot       string   `json:"cannot,omitempty"`       // why it cannot do it
 }
+
+// Sensitivity is how the mass of an estimate changes with less of its data.
+type Sensitivity struct {
+	Estimate string   `json:"estimate"`
+	Change   string   `json:"change"` // "without the innermost bin"
+	At       string   `json:"at"`
+	Radius   float64  `json:"radius_kpc"`
+	Mass     Interval `json:"mass"`      // with less data
+	LnChange float64  `json:"ln_change"` // of its median
+	InSD     float64  `json:"in_sd"`     // the same, in standard deviations of the mass with all data
+}

@@ -18,6 +18,7 @@ func (w *Weighing) WriteText(out io.Writer) error {
 	t.matched()
 	t.ratios()
 	t.levers()
+	t.sensitivity()
 	t.checks()
 	t.section("Rests on", func(e Estimate) []string { return e.Assumes })
 	t.cautions()

@@ -150,6 +150,29 @@ func (t *text) levers() {
 	}
 }
 
+// sensitivity says how the masses change with less data.
+func (t *text) sensitivity() {
+	if len(t.w.Sensitivity) == 0 {
+		return
+	}
+	t.printf("\nWith less data (change of the mass, in its own errors)\n")
+	head, index := []string{""}, map[string]int{}
+	rows := [][]string{head}
+	for _, s := range t.w.Sensitivity {
+		name := s.Estimate + " " + s.Change
+		if _, ok := index[name]; !ok {
+			index[name] = len(rows)
+			rows = append(rows, []string{name})
+		}
+		row := append(rows[index[name]], fmt.Sprintf("%+.0f%%", 100*math.Expm1(s.LnChange)), fmt.Sprintf("%+.1fσ", s.InSD))
+		rows[index[name]] = row
+		if len(row) > len(rows[0]) {
+			rows[0] = append(rows[0], fmt.Sprintf("within %.0f kpc", s.Radius), "")
+		}
+	}
+	t.table(rows)
+}
+
 // count writes a small number in words.
 func count(n int) string {
 	words := []string{"no", "one", "two", "three", "four", "five", "six", "seven", "eight", "nine"}

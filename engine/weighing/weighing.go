@@ -33,6 +33,7 @@ type Weighing struct {
 	CombinedBy  string        `json:"combined_by,omitempty"` // what goes into tables: "linear" or "random-effects"
 	Whole       *Whole        `json:"combined_profile,omitempty"`
 	Levers      []Lever       `json:"levers,omitempty"`
+	Sensitivity []Sensitivity `json:"sensitivity,omitempty"`
 	Warnings    []string      `json:"warnings,omitempty"` // of the comparison
 	Failures    []Failure     `json:"failures,omitempty"`
 	Nodes       []Node        `json:"nodes"`
