@@ -1,8 +1,6 @@
 package reconcile
 
 import (
-	"math"
-
 	"gonum.org/v1/gonum/mat"
 )
 
@@ -120,15 +118,4 @@ func addScaled(sum []float64, f float64, x []float64) []float64 {
 		sum[i] += f * v
 	}
 	return sum
-}
-
-// worst is the tension farthest out, nil when there is none.
-func worst(tensions []Tension) *Tension {
-	var out *Tension
-	for i := range tensions {
-		if t := &tensions[i]; out == nil || math.Abs(t.Sigma) > math.Abs(out.Sigma) {
-			out = t
-		}
-	}
-	return out
 }
