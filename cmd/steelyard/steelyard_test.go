@@ -320,15 +320,21 @@ func TestTextsFitTheTerminal(t *testing.T) {
 		texts = append(texts, out)
 	}
 	show("weigh", recipe)
-	edit(t, filepath.Join(filepath.Dir(recipe), "temperature.csv"), "1.1,1.6,6.53", "1.1,1.6,6.63")
-	edit(t, recipe, "draws = 300", "draws = 250")
-	edit(t, recipe, "hubble_constant = \"70 km/s/Mpc\"", "hubble_constant = \"68 km/s/Mpc\"")
-	edit(t, recipe, "radii_from = lensing.shapes.nfw", "radii_from = \"own\"")
+	edit(t, recipe, "concentration = lognormal(4.5, 0.3)", "concentration = relation(\"duffy-2008\")")
+	edit(t, recipe, "count = 10", "count = 8")
+	edit(t, recipe, "zphot < 3", "zphot < 2.5")
 	show("weigh", recipe)
 	show("since", recipe)
 	for _, name := range []string{"reconcile", "reported.earlier_shear", "dynamics.redshifts.virial"} {
 		show("trace", recipe, name)
 	}
+	other := dunlin(t)
+	show("weigh", other)
+	edit(t, other, "hubble_constant = \"70 km/s/Mpc\"", "hubble_constant = \"68 km/s/Mpc\"")
+	edit(t, other, "radii_from = lensing.shear.nfw", "radii_from = \"own\"")
+	edit(t, other, "column(\"g_t_err\")", "column(\"g_t\")")
+	show("weigh", other)
+	show("since", other)
 	for _, text := range texts {
 		for _, line := range strings.Split(text, "\n") {
 			if n := len([]rune(line)); n > 100 && !strings.Contains(line, "sha256") {
