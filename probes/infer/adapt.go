@@ -130,7 +130,8 @@ func (t *target) adapt(ctx context.Context, m *mixture, c *cloud, s Stream) (_ *
 		if efficiency > best+0.03 {
 			best, stale = efficiency, 0
 		}
-		if (efficiency > goodRound || stale >= 3) && shape < heavyRound {
+		settled := (efficiency > goodRound || stale >= 3) && shape < heavyRound
+		if settled || r >= mostRounds/2 && efficiency < hopeless {
 			break
 		}
 	}

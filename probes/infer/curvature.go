@@ -43,59 +43,20 @@ func (p *probe) visit(z []float64) (float64, error) {
 }
 
 // fit returns the normal distribution with the curvature found, about the
-// highest point visited, a Newton step from the centre among them.
+// highest point visited, a Newton step from the centre among them. Where the
+// directions turn out far from the principal axes it measures again along these,
+// for along a crooked direction a long ridge cannot be seen.
 func (p *probe) fit() (mode, error) {
 	d := p.dim
 	p.best, p.bestLog = p.centre, p.logp
-	slope := make([]float64, d)
-	for i := range d {
-		if err := p.scale(i, &slope[i]); err != nil {
+	step := make([]float64, d)
+	for pass := 1; ; pass++ {
+		straight, err := p.measure(step)
+		if err != nil {
 			return mode{}, err
 		}
-	}
-	// In the scaled directions the Hessian of −logp has units on its diagonal.
-	hess := mat.NewSymDense(d, nil)
-	for i := range d {
-		hess.SetSym(i, i, 1)
-		for j := range i {
-			var f [4]float64
-			bad := false
-			for k, s := range [4][2]float64{{1, 1}, {1, -1}, {-1, 1}, {-1, -1}} {
-				l, err := p.at(i, s[0], j, s[1])
-				if err != nil {
-					return mode{}, err
-				}
-				f[k], bad = l, bad || math.IsInf(l, -1)
-			}
-			if !bad {
-				hess.SetSym(i, j, -(f[0]-f[1]-f[2]+f[3])/4)
-			}
-		}
-	}
-	var eigen mat.EigenSym
-	if !eigen.Factorize(hess, true) {
-		return mode{}, errors.New("infer: the curvature at a mode could not be found")
-	}
-	values := eigen.Values(nil)
-	var vectors mat.Dense
-	eigen.VectorsTo(&vectors)
-	// Covariance = B V diag(1/λ) Vᵀ Bᵀ, λ kept away from zero; the Newton step is
-	// the covariance times the slope.
-	root := make([]float64, d*d) // B V diag(λ^−½)
-	step := make([]float64, d)
-	for k := range d {
-		lambda := max(values[k], 0.05)
-		along := 0.0
-		for i := range d {
-			along += vectors.At(i, k) * slope[i]
-		}
-		for r := range d {
-			sum := 0.0
-			for i := range d {
-				sum += p.basis[r*d+i] * vectors.At(i, k)
-			}
-			root[r*d+k] = sum / math.Sqrt(lambda)
-			step[r] += sum * max(min(along/lambda, 1), -1)
+		if straight || pass == 3 {
+			break
 		}
 	}
 	moved := make([]float64, d)
@@ -105,16 +66,83 @@ func (p *probe) fit() (mode, error) {
 	if _, err := p.visit(moved); err != nil {
 		return mode{}, err
 	}
+	// The basis is now a root of the covariance.
 	m := mode{z: slices.Clone(p.best), logp: p.bestLog, factor: make([]float64, d*d)}
 	for r := range d {
 		for c := range d {
-			m.factor[r*d+c] = dot(root[r*d:(r+1)*d], root[c*d:(c+1)*d])
+			m.factor[r*d+c] = dot(p.basis[r*d:(r+1)*d], p.basis[c*d:(c+1)*d])
 		}
 	}
 	if !cholesky(m.factor, d) {
 		m.factor = identity(d)
 	}
 	return m, nil
+}
+
+// measure scales the directions, finds the Hessian along them and turns them
+// into its principal axes, each one standard deviation long. step is set to the
+// Newton step. straight says that the directions were near the axes before.
+func (p *probe) measure(step []float64) (straight bool, err error) {
+	d := p.dim
+	slope := make([]float64, d)
+	for i := range d {
+		if err := p.scale(i, &slope[i]); err != nil {
+			return false, err
+		}
+	}
+	hess, err := p.hessian()
+	if err != nil {
+		return false, err
+	}
+	var eigen mat.EigenSym
+	if !eigen.Factorize(hess, true) {
+		return false, errors.New("infer: the curvature at a mode could not be found")
+	}
+	values := eigen.Values(nil)
+	var vectors mat.Dense
+	eigen.VectorsTo(&vectors)
+	axes := make([]float64, d*d)
+	clear(step)
+	for k := range d {
+		lambda, along := max(values[k], 0.02), 0.0
+		for i := range d {
+			along += vectors.At(i, k) * slope[i]
+		}
+		for r := range d {
+			sum := 0.0
+			for i := range d {
+				sum += p.basis[r*d+i] * vectors.At(i, k)
+			}
+			axes[r*d+k] = sum / math.Sqrt(lambda)
+			step[r] += sum * max(min(along/lambda, 1), -1)
+		}
+	}
+	copy(p.basis, axes)
+	return values[0] > 0.2 && values[d-1] < 5, nil
+}
+
+// hessian returns the Hessian of −logp along the scaled directions, in which it
+// has units on its diagonal.
+func (p *probe) hessian() (*mat.SymDense, error) {
+	hess := mat.NewSymDense(p.dim, nil)
+	for i := range p.dim {
+		hess.SetSym(i, i, 1)
+		for j := range i {
+			sum, possible := 0.0, true
+			for _, s := range [4][3]float64{{1, 1, 1}, {1, -1, -1}, {-1, 1, -1}, {-1, -1, 1}} {
+				l, err := p.at(i, s[0], j, s[1])
+				if err != nil {
+					return nil, err
+				}
+				sum += s[2] * l
+				possible = possible && !math.IsInf(l, -1)
+			}
+			if possible {
+				hess.SetSym(i, j, -sum/4)
+			}
+		}
+	}
+	return hess, nil
 }
 
 // scale stretches direction i until one step of it lowers logp by about ½ on

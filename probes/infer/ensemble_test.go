@@ -64,10 +64,10 @@ func TestEnsembleStuckInModesSaysSo(t *testing.T) {
 	}
 }
 
-// Importance sampling that cannot settle falls back and says so. A shell in ten
-// dimensions, thin against its radius, defeats any few t distributions.
+// Importance sampling that cannot settle falls back and says so. A thin shell
+// in four dimensions defeats any few t distributions.
 func TestFallback(t *testing.T) {
-	const dim, radius, width = 10, 20.0, 0.5
+	const dim, radius, width = 4, 20.0, 0.1
 	k := flat(dim)
 	for j := range k.problem.Free {
 		k.problem.Free[j].Prior = uniform40

@@ -44,7 +44,7 @@ func DrawPosterior(ctx context.Context, p Problem, o Options) (*Sample, error) {
 		if f, err = t.propose(ctx, m, proposals(o.Draws, efficiency), work.Sub("final")); err != nil {
 			return nil, err
 		}
-		if f.passes() && f.shape < heavyRound {
+		if f.passes() && f.shape < heavyRound || f.efficiency() < hopeless {
 			break
 		}
 		c.add(f.z, f.logp, m.lnDensity)
@@ -64,8 +64,9 @@ func DrawPosterior(ctx context.Context, p Problem, o Options) (*Sample, error) {
 
 const (
 	mostAttempts   = 3
-	mostTailShape  = 0.7 // of weights that can be used (Vehtari et al. 2024)
-	leastEfficient = 0.1 // effective size over size of the final proposals
+	mostTailShape  = 0.7  // of weights that can be used (Vehtari et al. 2024)
+	leastEfficient = 0.1  // effective size over size of the final proposals
+	hopeless       = 0.05 // efficiency at which another attempt is not worth its time
 	fewestDraws    = 500
 )
 
