@@ -80,7 +80,7 @@ func (p Prior) Score(x float64) float64 {
 		half := p.B/2 - p.A/2
 		return fromTails((x/2-p.A/2)/half, (p.B/2-x/2)/half)
 	case LogUniformKind:
-		return fromTails(math.Log(x/p.A)/p.lnWidth(), math.Log(p.B/x)/p.lnWidth())
+		return fromTails(lnRatio(p.A, x)/p.lnWidth(), lnRatio(x, p.B)/p.lnWidth())
 	default: // TwoPieceKind
 		if x > p.A {
 			return (x - p.A) / (p.C / z84)
@@ -115,5 +115,14 @@ func fromTails(below, above float64) float64 {
 	return -mathext.NormalQuantile(above)
 }
 
-// lnWidth is ln(B/A), safe where the ratio overflows.
-func (p Prior) lnWidth() float64 { return math.Log(p.B) - math.Log(p.A) }
+// lnWidth is ln(B/A).
+func (p Prior) lnWidth() float64 { return lnRatio(p.A, p.B) }
+
+// lnRatio is ln(b/a) for 0 < a ≤ b, without cancellation where they are close
+// and safe where the ratio overflows.
+func lnRatio(a, b float64) float64 {
+	if b < 2*a {
+		return math.Log1p((b - a) / a)
+	}
+	return math.Log(b) - math.Log(a)
+}
