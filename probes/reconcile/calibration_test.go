@@ -11,13 +11,13 @@ import (
 	"steelyard/probes/infer"
 )
 
-// sets is how many data sets a calibration invents: two thousand, or a tenth of
-// them when nobody asked for the slow tests.
+// sets is how many data sets a calibration invents: two thousand, or few when
+// nobody asked for the slow tests.
 func sets() int {
 	if os.Getenv("STEELYARD_SLOW") != "" {
 		return 2000
 	}
-	return 200
+	return 120
 }
 
 // survey invents the data of several estimates of one mass, ln M = 0: each

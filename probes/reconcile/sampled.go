@@ -95,8 +95,8 @@ func (p scorePosterior) logPrior(joint []float64) float64 {
 }
 
 // neighbours is how many of the nearest stored draws one is picked from: a
-// fiftieth, so that there is a choice of residuals where the draws thin out too.
-func neighbours(draws int) int { return min(max(draws/50, 8), 100) }
+// hundredth, so that there is a choice of residuals where the draws thin out too.
+func neighbours(draws int) int { return min(max(draws/100, 8), 50) }
 
 // nearest picks for each row of joint scores a stored draw at random among the
 // nearest, distances being counted in standard deviations.
