@@ -33,10 +33,16 @@ func (m *mixture) refit(points [][]float64, weights []float64) *mixture {
 			}
 		}
 	}
+	largest := 0 // stays, however little is left beside the prior
+	for k := range parts {
+		if sums[k].share > sums[largest].share {
+			largest = k
+		}
+	}
 	var shares []float64
 	var kept []part
 	for k := range parts {
-		if sums[k].share > leastShare/10 || parts == 1 {
+		if sums[k].share > leastShare/10 || k == largest {
 			kept = append(kept, m.parts[k].moved(&sums[k]))
 			shares = append(shares, max(sums[k].share, leastShare))
 		}

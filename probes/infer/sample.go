@@ -34,7 +34,7 @@ func DrawPosterior(ctx context.Context, p Problem, o Options) (*Sample, error) {
 	var c cloud
 	c.add(z, logp, priorDensity)
 	var f *final
-	for attempt := 1; attempt <= mostAttempts; attempt++ {
+	for attempt := 1; ; attempt++ {
 		work := o.Stream.Sub(fmt.Sprintf("attempt %d", attempt))
 		m, efficiency, err := t.adapt(ctx, startMixture(t.dim, modes), &c, work)
 		if err != nil {
@@ -44,7 +44,7 @@ func DrawPosterior(ctx context.Context, p Problem, o Options) (*Sample, error) {
 		if f, err = t.propose(ctx, m, proposals(o.Draws, efficiency), work.Sub("final")); err != nil {
 			return nil, err
 		}
-		if f.passes() && f.shape < heavyRound || f.efficiency() < hopeless {
+		if f.passes() && f.shape < heavyRound || f.efficiency() < hopeless || attempt == mostAttempts {
 			break
 		}
 		c.add(f.z, f.logp, m.lnDensity)

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"math"
+	"os"
 	"strconv"
 	"strings"
 	"sync/atomic"
@@ -175,12 +176,16 @@ func TestLikelihoodMaySpoilItsArgument(t *testing.T) {
 // (scipy.stats.chi2.isf), so two parameters fail by chance once in 5000 seeds,
 // and the seed is fixed.
 func TestCalibration(t *testing.T) {
-	const problems, bins, draws = 300, 10, 499
+	const bins, draws = 10, 499
+	problems := 300.0
+	if os.Getenv("STEELYARD_SLOW") != "" {
+		problems = 6000
+	}
 	a, b := must(prior.LogNormal(2, 0.5)), must(prior.Normal(1, 0.3))
 	counts := [2][bins]float64{}
 	within := [2]float64{}
 	rng := NewStream("calibration truth").Rand(0)
-	for i := range problems {
+	for i := range int(problems) {
 		truth := [2]float64{a.FromScore(rng.NormFloat64()), b.FromScore(rng.NormFloat64())}
 		y1, y2 := truth[0]*truth[1]+0.3*rng.NormFloat64(), truth[0]+0.4*rng.NormFloat64()
 		p := Problem{Free: []Free{{Name: "a", Prior: a}, {Name: "b", Prior: b}}, Likelihood: plain(func(x []float64) float64 {
