@@ -4,6 +4,7 @@ import (
 	"math/rand/v2"
 	"testing"
 
+	"steelyard/probes/halo"
 	"steelyard/probes/infer"
 )
 
@@ -38,12 +39,18 @@ func (m model) onGrid(rng *rand.Rand, n int) *infer.Draws {
 	return d
 }
 
-// BenchmarkFiveEstimatesAtFiveRadii joins, matches and compares.
+// BenchmarkFiveEstimatesAtFiveRadii joins, matches, combines and compares.
 func BenchmarkFiveEstimatesAtFiveRadii(b *testing.B) {
-	estimates := fiveEstimates()
-	places := []At{{Radius: 400}, {Radius: 600}, {Radius: 800}, {Radius: 1000}, {Radius: 1500}}
+	s := Setup{
+		Estimates: fiveEstimates(), RadiiFrom: "p", Background: background(b),
+		Own: []halo.Definition{{Delta: 2500, Of: "critical"}, {Delta: 500, Of: "critical"}, {Delta: 200, Of: "critical"}},
+	}
+	for _, d := range s.Own {
+		s.Places = append(s.Places, At{Definition: d})
+	}
+	s.Places = append(s.Places, At{Radius: 800}, At{Radius: 1000})
 	for b.Loop() {
-		m := matchEstimates(b, Setup{Estimates: estimates, Places: places})
+		m := matchEstimates(b, s)
 		if _, err := Compare(m, Limits, infer.NewStream("bench")); err != nil {
 			b.Fatal(err)
 		}

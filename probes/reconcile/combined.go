@@ -117,6 +117,33 @@ func covarianceOf(x, y []float64) float64 {
 	return sum / float64(len(x))
 }
 
+// ownRange is the part of the grid in which the combined profile must be known to
+// find its own radii: those of the members' mean profiles, and as much again in
+// the logarithm of the radius as their masses may be off.
+func (s Setup) ownRange(members []int) ([]float64, error) {
+	const room = 2.5 // a factor of 15 in mass inside a given density
+	grid := infer.Grid()
+	from, to := len(grid)-1, 0
+	for _, def := range s.Own {
+		threshold, err := s.Background.threshold(def)
+		if err != nil {
+			return nil, err
+		}
+		for _, k := range members {
+			d := s.Estimates[k].Draws
+			mean := &infer.Draws{N: 1, Radii: d.Radii, LnMass: make([]float64, len(d.Radii))}
+			for i, v := range d.LnMass {
+				mean.LnMass[i%len(d.Radii)] += v / float64(d.N)
+			}
+			r, _, _ := ownRadii(mean, threshold)
+			lo, _ := slices.BinarySearch(grid, r[0]/room)
+			hi, _ := slices.BinarySearch(grid, r[0]*room)
+			from, to = min(from, lo), max(to, hi)
+		}
+	}
+	return grid[max(from-1, 0):min(to+1, len(grid))], nil
+}
+
 // combineProfiles combines the members radius by radius and reads the outcome
 // at its own radii.
 func (s Setup) combineProfiles(m *Matching, carriers []*carrier, stream infer.Stream) error {
@@ -127,7 +154,11 @@ func (s Setup) combineProfiles(m *Matching, carriers []*carrier, stream infer.St
 	for _, k := range m.Members {
 		covers[0], covers[1] = max(covers[0], m.Compared[k].Covers[0]), min(covers[1], m.Compared[k].Covers[1])
 	}
-	radii, n := infer.Grid(), len(carriers[m.Members[0]].order)
+	radii, err := s.ownRange(m.Members)
+	if err != nil {
+		return err
+	}
+	n := len(carriers[m.Members[0]].order)
 	z := scatterScores(stream, n)
 	linear := &infer.Draws{N: n, Radii: radii, Covers: covers, LnMass: make([]float64, n*len(radii))}
 	random := *linear

@@ -133,7 +133,7 @@ func TestDoubtsAreSaid(t *testing.T) {
 
 // background is one in which a sphere's mean density at 200 times critical has a
 // radius of its own for every mass.
-func background(t *testing.T) Background {
+func background(t testing.TB) Background {
 	t.Helper()
 	c, err := cosmology.New(cosmology.Params{HubbleConstant: 70, OmegaMatter: 0.3, OmegaLambda: 0.7, W0: -1})
 	if err != nil {

@@ -78,8 +78,8 @@ const directions = 2
 // deviations apart. The rule converges geometrically: for a normal integrand the
 // error is exp(−2π²/spacing²), below 2e-4, and what lies outside below 3e-3.
 var (
-	reach   = [...]int{1: 4, 2: 3, 3: 2}
-	spacing = [...]float64{1: 1, 2: 1.25, 3: 1.5}
+	reach   = [...]int{1: 4, 2: 2, 3: 2}
+	spacing = [...]float64{1: 1, 2: 1.5, 3: 1.5}
 )
 
 func newContrastDensity(logs []*logDensity, common [][]float64) *contrastDensity {
@@ -221,9 +221,9 @@ func (c *contrastDensity) log(x []float64) float64 {
 }
 
 const (
-	effort   = 1000000 // evaluations of one estimate's density that an agreement may cost
-	fewest   = 500     // points at which the density is evaluated, whatever the effort
-	reliable = 30      // draws beyond zero below which a tail is fitted
+	effort   = 600000 // evaluations of one estimate's density that an agreement may cost
+	fewest   = 500    // points at which the density is evaluated, whatever the effort
+	reliable = 30     // draws beyond zero below which a tail is fitted
 )
 
 // lessLikely is the probability of differences less likely than none. The

@@ -9,7 +9,7 @@ import (
 )
 
 const (
-	cells = 4096 // of the grid on which densities are convolved
+	cells = 2048 // of the grid on which densities are convolved
 	// kernel is the width of the smoothing kernel in standard deviations of the
 	// sum; its variance is taken out of the draws beforehand.
 	kernel = 0.05

@@ -14,7 +14,7 @@ import (
 )
 
 // Version is raised when equal estimates would give other numbers.
-const Version = 2
+const Version = 3
 
 // Result is what the comparison found.
 type Result struct {
