@@ -44,6 +44,9 @@ func (p *Plan) compareNodes(from map[string]source, suffix string) []engine.Node
 	facts := append(p.backgroundFacts(), fmt.Sprintf("seed = %d", p.Recipe.Sampling.Seed))
 	for _, name := range c.Estimates {
 		inputs = append(inputs, from[name].node)
+		if from[name].tilts != nil {
+			inputs = append(inputs, name)
+		}
 		facts = append(facts, fmt.Sprintf("estimate = %q", name))
 		for _, t := range from[name].tilts {
 			facts = append(facts, fmt.Sprintf("tilt = %q %q %s %s", name, t.Nuisance, exact(t.Mean), exact(t.SD)))
@@ -159,7 +162,14 @@ func (p *Plan) compared(job engine.Job, from map[string]source) ([]reconcile.Est
 		if err := decode(job, from[name].node, draws); err != nil {
 			return nil, err
 		}
-		out = append(out, reconcile.Estimate{Name: name, Block: data[name], Draws: draws, Tilts: from[name].tilts})
+		e := reconcile.Estimate{Name: name, Block: data[name], Draws: draws, Tilts: from[name].tilts}
+		if e.Tilts != nil {
+			e.Alone = new(infer.Draws)
+			if err := decode(job, name, e.Alone); err != nil {
+				return nil, err
+			}
+		}
+		out = append(out, e)
 	}
 	return out, nil
 }

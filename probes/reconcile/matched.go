@@ -67,7 +67,7 @@ func MatchAll(s Setup, joint *Joint, stream infer.Stream) (*Matching, error) {
 	m := &Matching{Warnings: slices.Clone(joint.Warnings)}
 	carriers := make([]*carrier, len(s.Estimates))
 	for k, e := range s.Estimates {
-		q := e.Draws.Quality
+		q := e.alone().Quality
 		m.Compared = append(m.Compared, Compared{
 			Name: e.Name, Block: e.Block, Covers: e.Draws.Covers,
 			PoorlyFitted: q.Dof > 0 && q.PValue < poorFit, NotConverged: !q.Converged,
@@ -176,7 +176,7 @@ func (s Setup) match(carriers []*carrier, at At) (*Matched, error) {
 		}
 	}
 	for k, e := range s.Estimates {
-		mark, err := read(e.Draws, radius, threshold, m.Radius)
+		mark, err := read(e.alone(), radius, threshold, m.Radius)
 		if err != nil {
 			return nil, fmt.Errorf("%s: %w", e.Name, err)
 		}
@@ -200,8 +200,9 @@ func (s Setup) match(carriers []*carrier, at At) (*Matched, error) {
 func (s Setup) referenceRadius(threshold float64) (Interval, error) {
 	for _, e := range s.Estimates {
 		if e.Name == s.RadiiFrom {
-			radii, _, outside := ownRadii(e.Draws, threshold)
-			if 2*outside > e.Draws.N {
+			d := e.alone()
+			radii, _, outside := ownRadii(d, threshold)
+			if 2*outside > d.N {
 				return Interval{}, fmt.Errorf("most draws of %s have no such radius between 1 kpc and 30 Mpc", e.Name)
 			}
 			return interval(radii), nil

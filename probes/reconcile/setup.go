@@ -25,8 +25,18 @@ type Estimate struct {
 	Block string // the block whose data it is made from: "lensing.shapes"
 	Draws *infer.Draws
 	// Tilts are the priors of shared nuisances that these draws were made with in
-	// place of the recipe's, to have them where the other estimates put them.
+	// place of the recipe's, to have them where the other estimates put them. Alone
+	// then holds the draws under the recipe's own.
 	Tilts []Tilt
+	Alone *infer.Draws
+}
+
+// alone is what the estimate says by itself.
+func (e Estimate) alone() *infer.Draws {
+	if e.Alone != nil {
+		return e.Alone
+	}
+	return e.Draws
 }
 
 // Tilt is a normal prior in the recipe's prior scores of one nuisance.
