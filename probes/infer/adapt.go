@@ -95,11 +95,11 @@ func priorDensity(z [][]float64) []float64 {
 }
 
 const (
-	mostParts  = 16
-	mostRounds = 12
+	mostParts  = 30
+	mostRounds = 20
 	goodRound  = 0.75 // efficiency at which a round ends the adaptation
 	poorRound  = 0.60 // efficiency below which parts are added
-	heavyRound = 0.62 // tail shape above which parts are added, and the adaptation goes on
+	heavyRound = 0.50 // tail shape above which parts are added, and the adaptation goes on
 )
 
 // adapt learns the mixture in rounds of proposals, until a round's own
