@@ -128,6 +128,9 @@ func (p *Plan) addPulls(l *levers, name string, draws map[string]*infer.Draws) {
 			}
 			q.settings = p.naming(v.Nuisance)
 		}
+		if _, drawn := q.lever.Width(); drawn && draws[name].Parameter(d.Name) == nil {
+			continue // the halo the estimate has does without it
+		}
 		q.slope = l.slopeOf(q, draws)
 		l.pulls = append(l.pulls, q)
 	}

@@ -176,7 +176,9 @@ func (l Lever) Next(trials []Trial) (center float64, cannot string) {
 		return cmp.Compare(math.Abs(a.Pull-target), math.Abs(b.Pull-target))
 	})
 	a, b := near[0], near[1]
-	if math.Abs(a.Pull-b.Pull) < 0.02 { // below the noise of the draws
+	// A trial is as large as would do if the masses followed in proportion; what it
+	// moves by less than this is the noise of the draws.
+	if math.Abs(a.Pull-b.Pull) < 0.1 {
 		return 0, "it does not move these two apart or together"
 	}
 	x, y := l.coordinate(a.Center), l.coordinate(b.Center)
