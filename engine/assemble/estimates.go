@@ -256,7 +256,7 @@ func (p *Plan) reportedNode(m recipes.Reported) (engine.Node, error) {
 }
 
 // massesVersion is raised when the same draws would be summarised otherwise.
-const massesVersion = 1
+const massesVersion = 2
 
 // massesNode summarises an estimate's draws: everything printed of it but the
 // masses at the places of comparison.

@@ -78,7 +78,7 @@ func withoutEach(members []int, pairs []*pair, logs []*logDensity, residual, com
 			continue
 		}
 		l, r, c := without(logs, k), without(residual, k), without(common, k)
-		p, _ := newContrastDensity(l, c).lessLikely(r, c, effort/8, stream.Sub(fmt.Sprintf("without %d", k)))
+		p, _ := newContrastDensity(l, c).lessLikely(r, c, effort/20, stream.Sub(fmt.Sprintf("without %d", k)))
 		out[k] = Sigma(p)
 	}
 	return out

@@ -121,19 +121,15 @@ func covarianceOf(x, y []float64) float64 {
 // find its own radii: those of the members' mean profiles, and as much again in
 // the logarithm of the radius as their masses may be off.
 func (s Setup) ownRange(members []int) ([]float64, error) {
-	const room = 2.5 // a factor of 15 in mass inside a given density
+	const room = 1.8 // a factor of 3 in the mass of a profile M ∝ r
 	grid := infer.Grid()
 	from, to := len(grid)-1, 0
-	for _, def := range s.Own {
-		threshold, err := s.Background.threshold(def)
-		if err != nil {
-			return nil, err
-		}
-		for _, k := range members {
-			d := s.Estimates[k].Draws
-			mean := &infer.Draws{N: 1, Radii: d.Radii, LnMass: make([]float64, len(d.Radii))}
-			for i, v := range d.LnMass {
-				mean.LnMass[i%len(d.Radii)] += v / float64(d.N)
+	for _, k := range members {
+		mean := meanProfile(s.Estimates[k].Draws)
+		for _, def := range s.Own {
+			threshold, err := s.Background.threshold(def)
+			if err != nil {
+				return nil, err
 			}
 			r, _, _ := ownRadii(mean, threshold)
 			lo, _ := slices.BinarySearch(grid, r[0]/room)
@@ -142,6 +138,20 @@ func (s Setup) ownRange(members []int) ([]float64, error) {
 		}
 	}
 	return grid[max(from-1, 0):min(to+1, len(grid))], nil
+}
+
+func meanProfile(d *infer.Draws) *infer.Draws {
+	width := len(d.Radii)
+	mean := &infer.Draws{N: 1, Radii: d.Radii, LnMass: make([]float64, width)}
+	for i := range d.N {
+		for j, v := range d.LnMass[i*width : (i+1)*width] {
+			mean.LnMass[j] += v
+		}
+	}
+	for j := range mean.LnMass {
+		mean.LnMass[j] /= float64(d.N)
+	}
+	return mean
 }
 
 // combineProfiles combines the members radius by radius and reads the outcome

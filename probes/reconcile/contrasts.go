@@ -3,6 +3,7 @@ package reconcile
 import (
 	"fmt"
 	"math"
+	"math/rand/v2"
 	"slices"
 
 	"gonum.org/v1/gonum/mat"
@@ -38,6 +39,21 @@ func (l *logDensity) log(x float64) float64 {
 	return max(l.whole.log(x), -1e4)
 }
 
+// addTo adds to each sum the log density at x less so many steps of the table.
+func (l *logDensity) addTo(sums []float64, x float64, steps []float64) {
+	at, last := (x-l.from)/l.step, float64(len(l.values)-1)
+	for i, s := range steps {
+		u := at - s
+		if !(u >= 0 && u < last) {
+			sums[i] += l.log(x - s*l.step)
+			continue
+		}
+		j := int(u)
+		v := l.values[j : j+2]
+		sums[i] += v[0] + (u-float64(j))*(v[1]-v[0])
+	}
+}
+
 func logDensities(parts [][]float64) []*logDensity {
 	out := make([]*logDensity, len(parts))
 	for k, p := range parts {
@@ -61,7 +77,7 @@ type contrastDensity struct {
 	center []float64   // c_k + the mean of the residuals
 	load   [][]float64 // B = [1 G], K × D
 	gain   [][]float64 // D × K: y = (u, z) at the peak is gain·(x − center) for normal p_k
-	offset [][]float64 // of each node, in ln M of each estimate
+	offset [][]float64 // of each estimate, where the nodes lie in steps of its table
 	score  [][]float64 // of each node, in z
 	volume float64     // ln of the cell of a node, with the norm of φ(z)
 	terms  []float64   // scratch
@@ -73,13 +89,14 @@ type contrastDensity struct {
 // than two nuisances rarely matter at once.
 const directions = 2
 
-// Nodes of the trapezium rule along one axis, by the number of axes: how many on
-// each side of the peak, and how many of a normal integrand's standard
-// deviations apart. The rule converges geometrically: for a normal integrand the
-// error is exp(−2π²/spacing²), below 2e-4, and what lies outside below 3e-3.
+// Nodes of the trapezium rule by the number of axes: how many of a normal
+// integrand's standard deviations apart, and the square of how many steps from
+// the peak. The rule converges geometrically: for a normal integrand the error is
+// exp(−2π²/spacing²), below 2e-4. Outside the ball lies less than 3e-2 of it; the
+// weights are those that give a normal integrand exactly.
 var (
-	reach   = [...]int{1: 4, 2: 2, 3: 2}
 	spacing = [...]float64{1: 1, 2: 1.5, 3: 1.5}
+	reach   = [...]int{1: 16, 2: 5, 3: 4}
 )
 
 func newContrastDensity(logs []*logDensity, common [][]float64) *contrastDensity {
@@ -145,9 +162,11 @@ func (c *contrastDensity) prepare() {
 	root := mat.NewTriDense(dims, mat.Lower, nil)
 	chol.LTo(root)
 	c.gain, c.peak, c.base = make([][]float64, dims), make([]float64, dims), make([]float64, len(c.load))
+	nodes := ball(dims)
+	c.offset = make([][]float64, len(c.load))
 	c.volume = -float64(dims-1) / 2 * math.Log(2*math.Pi)
 	for a := range dims {
-		c.volume += math.Log(root.At(a, a) * spacing[dims])
+		c.volume += math.Log(root.At(a, a) * math.Sqrt(2*math.Pi))
 		c.gain[a] = make([]float64, len(c.load))
 		for k, row := range c.load {
 			for b := range row {
@@ -155,33 +174,49 @@ func (c *contrastDensity) prepare() {
 			}
 		}
 	}
-	for index := range nodesOf(dims) {
-		y := make([]float64, dims)
-		for a := dims - 1; a >= 0; a-- {
-			side := 2*reach[dims] + 1
-			q := float64(index%side-reach[dims]) * spacing[dims]
-			index /= side
+	normal := 0.0
+	for _, q := range nodes {
+		y, square := make([]float64, dims), 0.0
+		for a, x := range q {
+			square += x * x
 			for b := a; b < dims; b++ {
-				y[b] += root.At(b, a) * q
+				y[b] += root.At(b, a) * x
 			}
 		}
-		offset := make([]float64, len(c.load))
+		normal += math.Exp(-square / 2)
 		for k, row := range c.load {
+			sum := 0.0
 			for a, g := range row {
-				offset[k] += g * y[a]
+				sum += g * y[a]
 			}
+			c.offset[k] = append(c.offset[k], sum/c.logs[k].step)
 		}
-		c.offset, c.score = append(c.offset, offset), append(c.score, y[1:])
+		c.score = append(c.score, y[1:])
 	}
-	c.terms = make([]float64, len(c.offset))
+	c.volume -= math.Log(normal)
+	c.terms = make([]float64, len(nodes))
 }
 
-func nodesOf(dims int) int {
-	n := 1
+// ball lists the nodes, in standard deviations from the peak.
+func ball(dims int) [][]float64 {
+	nodes := [][]float64{nil}
 	for range dims {
-		n *= 2*reach[dims] + 1
+		var more [][]float64
+		for _, q := range nodes {
+			for i := -4; i <= 4; i++ {
+				next := append(slices.Clone(q), float64(i)*spacing[dims])
+				square := 0.0
+				for _, x := range next {
+					square += x * x
+				}
+				if square <= float64(reach[dims])*spacing[dims]*spacing[dims]+1e-9 {
+					more = append(more, next)
+				}
+			}
+		}
+		nodes = more
 	}
-	return n
+	return nodes
 }
 
 // log is the logarithm of the density at the differences of x.
@@ -198,19 +233,18 @@ func (c *contrastDensity) log(x []float64) float64 {
 			c.base[k] -= g * c.peak[a]
 		}
 	}
-	best := math.Inf(-1)
-	for i, offset := range c.offset {
+	for i, score := range c.score {
 		sum := 0.0
-		for a, z := range c.score[i] {
+		for a, z := range score {
 			z += c.peak[a+1]
 			sum -= z * z / 2
 		}
-		for k, b := range c.base {
-			sum += c.logs[k].log(b - offset[k])
-		}
 		c.terms[i] = sum
-		best = max(best, sum)
 	}
+	for k, b := range c.base {
+		c.logs[k].addTo(c.terms, b, c.offset[k])
+	}
+	best := slices.Max(c.terms)
 	total := 0.0
 	for _, t := range c.terms {
 		if t > best-15 { // the rest adds less than 1e-4
@@ -221,7 +255,7 @@ func (c *contrastDensity) log(x []float64) float64 {
 }
 
 const (
-	effort   = 600000 // evaluations of one estimate's density that an agreement may cost
+	effort   = 400000 // evaluations of one estimate's density that an agreement may cost
 	fewest   = 500    // points at which the density is evaluated, whatever the effort
 	reliable = 30     // draws beyond zero below which a tail is fitted
 )
@@ -231,13 +265,13 @@ const (
 // most four times; where it does not allow all draws, as many as it does.
 func (c *contrastDensity) lessLikely(residual, common [][]float64, effort int, stream infer.Stream) (p float64, fitted bool) {
 	draws := len(residual[0])
-	points := min(max(effort/(len(residual)*len(c.offset)), fewest), 4*draws)
+	points := min(max(effort/(len(residual)*len(c.terms)), fewest), 4*draws)
 	values := make([]float64, 0, points)
 	x := make([]float64, len(residual))
 	for turn := 0; len(values) < points; turn++ {
 		order := make([][]int, len(residual))
 		for k := range residual {
-			order[k] = stream.Sub(fmt.Sprintf("recombination %d", turn)).Rand(k).Perm(draws)
+			order[k] = someOf(stream.Sub(fmt.Sprintf("recombination %d", turn)).Rand(k), draws, points-len(values))
 		}
 		for i := range min(draws, points-len(values)) {
 			for k, r := range residual {
@@ -251,6 +285,19 @@ func (c *contrastDensity) lessLikely(residual, common [][]float64, effort int, s
 	}
 	clear(x)
 	return shareBelow(values, c.log(x), len(residual)-1)
+}
+
+// someOf lists all of n draws in random order, or as many as are needed if that
+// is less, at random.
+func someOf(rng *rand.Rand, n, needed int) []int {
+	if needed >= n {
+		return rng.Perm(n)
+	}
+	order := make([]int, needed)
+	for i := range order {
+		order[i] = rng.IntN(n)
+	}
+	return order
 }
 
 // shareBelow is the share of values below level. With fewer than reliable of

@@ -9,7 +9,10 @@ import (
 )
 
 const (
-	cells = 2048 // of the grid on which densities are convolved
+	// fewestCells and mostCells bound the grid on which densities are convolved; in
+	// between it is as fine as takes two points a kernel width.
+	fewestCells = 2048
+	mostCells   = 1 << 15
 	// kernel is the width of the smoothing kernel in standard deviations of the
 	// sum; its variance is taken out of the draws beforehand.
 	kernel = 0.05
@@ -60,12 +63,13 @@ type histogram struct{ grid } // values add up to one
 func newHistogram(x []float64, step float64) histogram {
 	h := histogram{grid{from: slices.Min(x), step: step}}
 	h.values = make([]float64, int((slices.Max(x)-h.from)/step)+2)
+	weight, perStep := 1/float64(len(x)), 1/step
 	for _, v := range x {
-		u := (v - h.from) / step
+		u := (v - h.from) * perStep
 		i := int(u)
 		f := u - float64(i)
-		h.values[i] += (1 - f) / float64(len(x))
-		h.values[i+1] += f / float64(len(x))
+		h.values[i] += (1 - f) * weight
+		h.values[i+1] += f * weight
 	}
 	return h
 }
@@ -73,13 +77,13 @@ func newHistogram(x []float64, step float64) histogram {
 // sumDensity is the density of the sum of one draw of each part and a normal
 // deviate of the given width, over all combinations of the draws: the product
 // of the transforms.
-func sumDensity(parts []histogram, step, width float64) grid {
+func sumDensity(parts []histogram, cells int, step, width float64) grid {
 	fft := fourier.NewFFT(cells)
 	pad := int(8 * width / step)
 	g := grid{from: -float64(pad) * step, step: step}
 	total := make([]complex128, cells/2+1)
 	for i := range total {
-		k := 2 * math.Pi * float64(i) / (cells * step)
+		k := 2 * math.Pi * float64(i) / (float64(cells) * step)
 		total[i] = complex(math.Exp(-k*k*width*width/2), 0)
 	}
 	buffer, transform := make([]float64, cells), make([]complex128, cells/2+1)
@@ -98,7 +102,7 @@ func sumDensity(parts []histogram, step, width float64) grid {
 	g.values = fft.Sequence(buffer, total)
 	for i, v := range g.values {
 		// Rounding leaves ±1e-17 where the density vanishes.
-		g.values[i] = max(v/cells/step, 0)
+		g.values[i] = max(v/float64(cells)/step, 0)
 	}
 	return g
 }
@@ -137,13 +141,17 @@ func convolve(parts ...[]float64) *density {
 		shrunk[k] = shrink(p)
 		span += slices.Max(shrunk[k]) - slices.Min(shrunk[k])
 	}
+	cells := fewestCells
+	for cells < mostCells && float64(cells) < 2*span/width {
+		cells *= 2
+	}
 	// Two spare points a part: a histogram is up to two longer than its range.
 	step := span / float64(cells-2*len(parts)-2)
 	histograms := make([]histogram, len(shrunk))
 	for k, p := range shrunk {
 		histograms[k] = newHistogram(p, step)
 	}
-	d := &density{grid: sumDensity(histograms, step, width)}
+	d := &density{grid: sumDensity(histograms, cells, step, width)}
 	d.cumulative = d.cumulate()
 	trust := newConfidence(shares, n)
 	d.lower = trust.lowerTail(d.cumulative)
@@ -221,11 +229,11 @@ func (d *density) LessLikely(x float64) (p float64, fitted bool) {
 }
 
 // tabulate is LessLikely between the smallest and the largest of some values, at
-// points 1/40 of a standard deviation apart or closer.
+// points 1/20 of a standard deviation apart or closer.
 func (d *density) tabulate(values []float64) grid {
 	_, sd := meanSD(values)
 	from, to := slices.Min(values), slices.Max(values)
-	points := int((to-from)/(sd/40)) + 2
+	points := int((to-from)/(sd/20)) + 2
 	g := grid{from: from, step: (to - from) / float64(points-1), values: make([]float64, points)}
 	for i := range g.values {
 		g.values[i], _ = d.LessLikely(g.x(i))

@@ -52,7 +52,7 @@ type Mark struct {
 	Mass         Interval
 	LnMean, LnSD float64
 	Extrapolated bool
-	// Slope is by how much the median ln M rises when the radius moves by its own
+	// Slope is by how much the mean ln M rises when the radius moves by its own
 	// error; 0 where Matched.Radius is.
 	Slope float64
 }
@@ -228,7 +228,9 @@ func read(d *infer.Draws, radius, threshold float64, around Interval) (Mark, err
 		lo, below := d.LnMassesAt(math.Log(around.Lo))
 		hi, above := d.LnMassesAt(math.Log(around.Hi))
 		if below && above {
-			mark.Slope = (interval(hi).Median - interval(lo).Median) / 2
+			inner, _ := meanSD(lo)
+			outer, _ := meanSD(hi)
+			mark.Slope = (outer - inner) / 2
 		}
 	}
 	return mark, nil
@@ -269,12 +271,14 @@ func ownRadii(d *infer.Draws, threshold float64) (radii, ln []float64, outside i
 	radii, ln = make([]float64, d.N), make([]float64, d.N)
 	for i := range d.N {
 		r, ok := d.RadiusAt(i, threshold)
-		if !ok {
-			outside++
-			r = d.Radii[0]
-			if last := d.Radii[len(d.Radii)-1]; 3*math.Exp(d.LnMassAt(i, math.Log(last))) > 4*math.Pi*threshold*last*last*last {
-				r = last
-			}
+		if ok {
+			radii[i], ln[i] = r, math.Log(4*math.Pi/3*threshold)+3*math.Log(r)
+			continue
+		}
+		outside++
+		r = d.Radii[0]
+		if last := d.Radii[len(d.Radii)-1]; 3*math.Exp(d.LnMassAt(i, math.Log(last))) > 4*math.Pi*threshold*last*last*last {
+			r = last
 		}
 		radii[i], ln[i] = r, d.LnMassAt(i, math.Log(r))
 	}

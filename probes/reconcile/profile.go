@@ -52,9 +52,10 @@ func profileTensions(m *Matching) []ProfileTension {
 // direction is compared like a pair at one radius; of several, how likely a
 // point is goes by its distance from the mean in standard deviations.
 func profileTension(places []*Matched, a, b int) ProfileTension {
-	rows := make([][]float64, len(places[0].LnMass[a]))
+	n, width := len(places[0].LnMass[a]), len(places)
+	rows, flat := make([][]float64, n), make([]float64, n*width)
 	for i := range rows {
-		rows[i] = make([]float64, len(places))
+		rows[i] = flat[i*width : (i+1)*width]
 		for j, p := range places {
 			rows[i][j] = p.LnMass[a][i] - p.LnMass[b][i]
 		}

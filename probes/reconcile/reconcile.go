@@ -14,7 +14,7 @@ import (
 )
 
 // Version is raised when equal estimates would give other numbers.
-const Version = 3
+const Version = 4
 
 // Result is what the comparison found.
 type Result struct {

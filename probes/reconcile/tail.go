@@ -106,7 +106,7 @@ func newConfidence(shares []float64, n int) *confidence {
 // last few draws do not decide it.
 func (c *confidence) lowerTail(cumulative grid) tail {
 	at := func(z float64) int {
-		return min(sort.SearchFloat64s(cumulative.values, normalBelow(-z)), cells-1)
+		return min(sort.SearchFloat64s(cumulative.values, normalBelow(-z)), len(cumulative.values)-1)
 	}
 	start, inner := at(tailFrom), at(tailFit)
 	sigma := (cumulative.x(inner) - cumulative.x(start)) / (tailFrom - tailFit)
